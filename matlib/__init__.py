@@ -1,0 +1,1 @@
+"""What a material is: Prony series, shift laws, cards and stress updates. SI units, numpy in and numpy out."""

@@ -1,0 +1,162 @@
+"""Every error that this project raises on purpose: a type with fields, which is also a builtin error."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+__all__ = [
+    "CardproofError",
+    "ConversionError",
+    "Fault",
+    "FileError",
+    "ParameterError",
+    "PoleError",
+    "ShiftRangeError",
+    "UnknownNameError",
+    "both_scales",
+]
+
+
+def both_scales(T: float) -> str:
+    """Write a temperature [K] in kelvin and in degrees Celsius, as every message does.
+
+    Examples
+    --------
+    >>> both_scales(353.15)
+    '353.15 K (80 degC)'
+    """
+    return f"{T:.6g} K ({round(T - 273.15, 4):.6g} degC)"
+
+
+class CardproofError(Exception):
+    """Base of all errors that are raised on purpose; never raised itself."""
+
+
+class ParameterError(CardproofError, ValueError):
+    """A number or an array that a formula cannot take.
+
+    Parameters
+    ----------
+    name : str
+        The parameter, as the caller knows it.
+    expected : str
+        What it must be, unit included.
+    found : object
+        What it was.
+    hint : str, optional
+        What to write instead.
+
+    Examples
+    --------
+    >>> print(ParameterError("tau", "> 0 s", -3.0))
+    `tau` must be > 0 s (got -3.0)
+    """
+
+    def __init__(self, name: str, expected: str, found: object, hint: str = "") -> None:
+        super().__init__(name, expected, found, hint)
+        self.name = name
+        self.expected = expected
+        self.found = found
+        self.hint = hint
+
+    def __str__(self) -> str:
+        text = f"`{self.name}` must be {self.expected} (got {self.found})"
+        return f"{text}; {self.hint}" if self.hint else text
+
+
+class ShiftRangeError(CardproofError, ValueError):
+    """A shift law was asked for a temperature where it gives no answer.
+
+    Parameters
+    ----------
+    law : str
+        Name of the law.
+    temperature : float
+        The temperature asked for [K].
+    limit : float
+        The nearest temperature that the law still answers, or its pole [K].
+    reason : str
+        Why there is no answer.
+    """
+
+    def __init__(self, law: str, temperature: float, limit: float, reason: str) -> None:
+        super().__init__(law, temperature, limit, reason)
+        self.law = law
+        self.temperature = temperature
+        self.limit = limit
+        self.reason = reason
+
+    def __str__(self) -> str:
+        return (
+            f"shift law {self.law}: no shift factor at {both_scales(self.temperature)}: "
+            f"{self.reason} {both_scales(self.limit)}"
+        )
+
+
+class PoleError(ShiftRangeError):
+    """A temperature at or below the pole, where the law diverges."""
+
+    def __init__(self, law: str, temperature: float, pole: float) -> None:
+        super().__init__(law, temperature, pole, "it is at or below the pole T_inf =")
+        self.args = (law, temperature, pole)
+
+
+class UnknownNameError(CardproofError, LookupError):
+    """A name that stands for nothing; the message lists the known ones."""
+
+    def __init__(self, kind: str, name: object, known: Iterable[str]) -> None:
+        self.kind = kind
+        self.name = name
+        self.known = tuple(known)
+        super().__init__(kind, name, self.known)
+
+    def __str__(self) -> str:
+        return f"unknown {self.kind} {self.name!r}: use one of {', '.join(self.known)}"
+
+
+class ConversionError(CardproofError, ValueError):
+    """A conversion of a shift law that cannot be made."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Fault:
+    """One thing wrong in a file: where, what was found, what is expected, what to write instead."""
+
+    key: str
+    found: str
+    expected: str
+    hint: str = ""
+
+    def __str__(self) -> str:
+        text = f"{self.key}: found {self.found}, expected {self.expected}"
+        return f"{text}; {self.hint}" if self.hint else text
+
+
+class FileError(CardproofError, ValueError):
+    """All faults of one file at once.
+
+    Parameters
+    ----------
+    file : str
+        The file, as the user named it.
+    faults : sequence of Fault
+        At least one.
+
+    Examples
+    --------
+    >>> print(FileError("a.card.toml", [Fault(key="shift.C2", found="-51.6", expected="a number > 0")]))
+    a.card.toml: shift.C2: found -51.6, expected a number > 0
+    """
+
+    def __init__(self, file: str, faults: Sequence[Fault]) -> None:
+        self.file = str(file)
+        self.faults = tuple(faults)
+        super().__init__(self.file, self.faults)
+
+    def lines(self) -> list[str]:
+        """One line a fault, the file named in each."""
+        return [f"{self.file}: {fault}" for fault in self.faults]
+
+    def __str__(self) -> str:
+        return "\n".join(self.lines())
