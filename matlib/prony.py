@@ -9,14 +9,13 @@ from typing import Self
 import numpy as np
 import numpy.typing as npt
 
-from matlib.arrays import FloatArray, frozen, require_finite, require_positive
+from matlib.arrays import FloatArray, frozen, require_positive
 from matlib.errors import ParameterError
+from matlib.terms import checked_terms, from_zero, merged_terms, ratios, require_not_negative
 
 __all__ = ["CreepSeries", "PronySeries"]
 
-_EPS = float(np.finfo(np.float64).eps)
-_EQUAL_TIMES = 4.0 * _EPS
-_FULL_SUM = 8.0 * _EPS
+_FULL_SUM = 8.0 * float(np.finfo(np.float64).eps)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -56,8 +55,8 @@ class PronySeries:
     times: FloatArray
 
     def __post_init__(self) -> None:
-        object.__setattr__(self, "equilibrium", _not_negative("equilibrium", self.equilibrium, "Pa"))
-        moduli, times = _checked_terms("moduli", self.moduli, "Pa", self.times)
+        object.__setattr__(self, "equilibrium", require_not_negative("equilibrium", self.equilibrium, "Pa"))
+        moduli, times = checked_terms("moduli", self.moduli, "Pa", self.times)
         object.__setattr__(self, "moduli", moduli)
         object.__setattr__(self, "times", times)
         require_positive("instantaneous modulus", self.instantaneous, "Pa")
@@ -87,7 +86,7 @@ class PronySeries:
         2.5
         """
         modulus = require_positive("instantaneous", instantaneous, "Pa")
-        shares, ordered = _checked_terms("fractions", fractions, "", times)
+        shares, ordered = checked_terms("fractions", fractions, "", times)
         total = math.fsum(shares)
         if total > 1.0 + _FULL_SUM:
             hint = "fractions are of the instantaneous modulus here; `from_long_term` takes those of the long-term one"
@@ -115,7 +114,7 @@ class PronySeries:
         8.0
         """
         modulus = require_positive("equilibrium", equilibrium, "Pa")
-        shares, ordered = _checked_terms("fractions", fractions, "", times)
+        shares, ordered = checked_terms("fractions", fractions, "", times)
         return cls(equilibrium=modulus, moduli=modulus * shares, times=ordered)
 
     @classmethod
@@ -151,7 +150,7 @@ class PronySeries:
         modulus : ndarray
             Stress a unit strain [Pa], of the shape of `xi`.
         """
-        decay = np.exp(-_ratios("xi", xi, self.times))
+        decay = np.exp(-ratios("xi", xi, self.times))
         return np.asarray(decay @ self.moduli + self.equilibrium)
 
     def storage(self, omega: npt.ArrayLike) -> FloatArray:
@@ -205,7 +204,7 @@ class PronySeries:
 
     def merged(self) -> Self:
         """The same modulus with terms of equal time made one (neighbours within 4 roundings of each other)."""
-        moduli, times = _merged_terms(self.moduli, self.times)
+        moduli, times = merged_terms(self.moduli, self.times)
         return type(self)(equilibrium=self.equilibrium, moduli=moduli, times=times)
 
 
@@ -244,8 +243,8 @@ class CreepSeries:
     def __post_init__(self) -> None:
         glassy = require_positive("instantaneous_compliance", self.instantaneous_compliance, "1/Pa")
         object.__setattr__(self, "instantaneous_compliance", glassy)
-        object.__setattr__(self, "fluidity", _not_negative("fluidity", self.fluidity, "1/(Pa s)"))
-        compliances, times = _checked_terms("compliances", self.compliances, "1/Pa", self.times)
+        object.__setattr__(self, "fluidity", require_not_negative("fluidity", self.fluidity, "1/(Pa s)"))
+        compliances, times = checked_terms("compliances", self.compliances, "1/Pa", self.times)
         object.__setattr__(self, "compliances", compliances)
         object.__setattr__(self, "times", times)
 
@@ -267,7 +266,7 @@ class CreepSeries:
         compliance : ndarray
             Strain a unit stress [1/Pa], of the shape of `xi`.
         """
-        retarded = -np.expm1(-_ratios("xi", xi, self.times)) @ self.compliances
+        retarded = -np.expm1(-ratios("xi", xi, self.times)) @ self.compliances
         flow = self.fluidity * np.asarray(xi, dtype=np.float64) if self.fluidity > 0.0 else 0.0
         return np.asarray(self.instantaneous_compliance + retarded + flow)
 
@@ -292,7 +291,7 @@ class CreepSeries:
 
     def merged(self) -> Self:
         """The same compliance with terms of equal time made one (neighbours within 4 roundings of each other)."""
-        compliances, times = _merged_terms(self.compliances, self.times)
+        compliances, times = merged_terms(self.compliances, self.times)
         return type(self)(
             instantaneous_compliance=self.instantaneous_compliance,
             compliances=compliances,
@@ -301,63 +300,9 @@ class CreepSeries:
         )
 
 
-def _not_negative(name: str, value: float, unit: str) -> float:
-    number = require_finite(name, value, unit)
-    if number < 0.0:
-        raise ParameterError(name, f">= 0 {unit}".rstrip(), value)
-    return number
-
-
-def _checked_terms(name: str, weights: npt.ArrayLike, unit: str, times: npt.ArrayLike) -> tuple[FloatArray, FloatArray]:
-    """Check the terms of a series and put them in ascending order of time, both read-only."""
-    checked = [_positive_vector(name, weights, unit), _positive_vector("times", times, "s")]
-    if checked[0].size != checked[1].size:
-        raise ParameterError("times", f"as many as `{name}` ({checked[0].size})", checked[1].size)
-    ordered = _by_time(*checked)
-    return frozen(ordered[0]), frozen(ordered[1])
-
-
-def _positive_vector(name: str, values: npt.ArrayLike, unit: str) -> FloatArray:
-    vector = np.asarray(values, dtype=np.float64)
-    if vector.ndim != 1:
-        raise ParameterError(name, "one-dimensional", f"shape {vector.shape}")
-    wrong = np.flatnonzero(~(np.isfinite(vector) & (vector > 0.0)))
-    if wrong.size:
-        first = int(wrong[0])
-        raise ParameterError(f"{name}[{first}]", f"finite and > 0 {unit}".rstrip(), float(vector[first]))
-    return vector
-
-
-def _by_time(weights: FloatArray, times: FloatArray) -> tuple[FloatArray, FloatArray]:
-    order = np.argsort(times, kind="stable")
-    return weights[order], times[order]
-
-
-def _merged_terms(weights: FloatArray, times: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Sum the weights of neighbours in ascending `times` that are equal to rounding."""
-    if times.size < 2:
-        return weights, times
-    starts = np.flatnonzero(np.concatenate([[True], np.diff(times) > _EQUAL_TIMES * times[:-1]]))
-    return np.add.reduceat(weights, starts), times[starts]
-
-
-def _axis(name: str, values: npt.ArrayLike) -> FloatArray:
-    array = np.asarray(values, dtype=np.float64)
-    if not np.all(array >= 0.0):
-        found = float(array[~(array >= 0.0)].flat[0])
-        raise ParameterError(name, ">= 0", found)
-    return array
-
-
-def _ratios(name: str, values: npt.ArrayLike, times: FloatArray) -> FloatArray:
-    """``values/times``, shape (..., n); an overflow to infinity is a decay to zero, as it should be."""
-    with np.errstate(over="ignore", under="ignore"):
-        return np.divide.outer(_axis(name, values), times)
-
-
 def _folded(omega: npt.ArrayLike, times: FloatArray) -> tuple[FloatArray, npt.NDArray[np.bool_]]:
     """The smaller of x and 1/x, and whether that is 1/x, for x = omega tau."""
     with np.errstate(over="ignore", under="ignore"):
-        x = np.multiply.outer(_axis("omega", omega), times)
+        x = np.multiply.outer(from_zero("omega", omega), times)
         fast = x > 1.0
         return np.where(fast, 1.0 / np.where(fast, x, 1.0), x), fast
