@@ -18,6 +18,8 @@ class ShiftLaw(ABC):
     A law is immutable. It answers with :math:`\ln a_T`, never with :math:`a_T`, which overflows.
     """
 
+    __slots__ = ()
+
     @property
     @abstractmethod
     def name(self) -> str:
