@@ -6,26 +6,44 @@ group ``cardproof.shift_laws``.
 
 from matlib.shift.arrhenius import Arrhenius
 from matlib.shift.base import ShiftLaw
+from matlib.shift.conversion import TARGETS, Conversion, convert_law
 from matlib.shift.crossover import Crossover
-from matlib.shift.measured import MeasuredRange
+from matlib.shift.difference import largest_difference_decades
+from matlib.shift.family import VftConstants, as_vft
+from matlib.shift.measured import OUTSIDE, MeasuredRange, Outside
 from matlib.shift.none import NoShift
 from matlib.shift.polynomial import Polynomial
 from matlib.shift.reduced_time import SHIFT_RULES, ShiftRule, find_shift_rule
+from matlib.shift.reference import move_reference, time_factor
+from matlib.shift.registry import PluginError, PluginLaw, plugin_laws
 from matlib.shift.table import Table
 from matlib.shift.vft import VFT
 from matlib.shift.wlf import WLF
 
 __all__ = [
+    "OUTSIDE",
     "SHIFT_RULES",
+    "TARGETS",
     "VFT",
     "WLF",
     "Arrhenius",
+    "Conversion",
     "Crossover",
     "MeasuredRange",
     "NoShift",
+    "Outside",
+    "PluginError",
+    "PluginLaw",
     "Polynomial",
     "ShiftLaw",
     "ShiftRule",
     "Table",
+    "VftConstants",
+    "as_vft",
+    "convert_law",
     "find_shift_rule",
+    "largest_difference_decades",
+    "move_reference",
+    "plugin_laws",
+    "time_factor",
 ]
