@@ -1,8 +1,10 @@
 r"""Effective moduli of loading modes from shear and bulk relaxation, exact.
 
 Where shear and bulk share one reduced time, the elastic relation between moduli holds between their Carson transforms
-(correspondence principle). Each reciprocal below is a sum with positive weights of reciprocals of Prony series, so it
-is a creep series, and its reciprocal is a Prony series again. The creep compliance of a mode is `creep_of` its modulus.
+(correspondence principle). The free sides of a mode put two moduli in line, :math:`1/M = a/A + b/B`, so that
+:math:`M = A B/P` with :math:`P = a B + b A`. With :math:`s = -1/x` this is a rational function of `x` whose poles are
+the times that `A` and `B` share and the roots of `P`, which is itself a Prony series; the residues at both are
+positive, so `M` is a Prony series too. The creep compliance of a mode is `creep_of` its modulus.
 
 References
 ----------
@@ -12,14 +14,15 @@ N. W. Tschoegl, The Phenomenological Theory of Linear Viscoelastic Behavior (198
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
 from matlib.arrays import FloatArray, frozen, require_finite, require_positive
 from matlib.errors import ParameterError
-from matlib.interconversion import creep_of, relaxation_of, secular_roots
-from matlib.prony import CreepSeries, PronySeries
+from matlib.interconversion import secular_roots
+from matlib.prony import PronySeries
 from matlib.terms import ratios
 
 __all__ = [
@@ -53,7 +56,7 @@ def uniaxial_stress_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
     >>> uniaxial_stress_modulus(PronySeries.elastic(1.2), PronySeries.elastic(2.0)).instantaneous
     3.0
     """
-    return _reciprocal_sum((1.0 / 3.0, G), (1.0 / 9.0, K))
+    return _in_line(1.0 / 3.0, G, 1.0 / 9.0, K)
 
 
 def equibiaxial_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
@@ -70,7 +73,7 @@ def equibiaxial_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
         :math:`\sigma_{11} = \sigma_{22}` a unit step of :math:`\epsilon_{11} = \epsilon_{22}`, with
         :math:`\sigma_{33} = 0` [Pa].
     """
-    return _reciprocal_sum((1.0 / 6.0, G), (2.0 / 9.0, K))
+    return _in_line(1.0 / 6.0, G, 2.0 / 9.0, K)
 
 
 def plane_strain_tension_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
@@ -87,7 +90,7 @@ def plane_strain_tension_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
         :math:`\sigma_{11}` a unit step of :math:`\epsilon_{11}`, with :math:`\epsilon_{22} = 0` and
         :math:`\sigma_{33} = 0` [Pa].
     """
-    return _reciprocal_sum((0.25, G), (0.75, K.scaled(3.0).plus(G)))
+    return _in_line(0.25, G, 0.75, K.scaled(3.0).plus(G))
 
 
 def uniaxial_strain_modulus(G: PronySeries, K: PronySeries) -> PronySeries:
@@ -130,6 +133,11 @@ def shear_and_bulk_of_young(
     ParameterError
         If not exactly one of `nu` and `K` is given, `nu` is out of its range, or ``9 K`` does not exceed the
         instantaneous Young's modulus.
+
+    Notes
+    -----
+    With constant `K` the relaxation times of :math:`G = 3KE/(9K - E)` are the roots of :math:`E - 9K`, one below each
+    time of `young`, and :math:`G_i = 27 K^2/(\tau_i E'(\tau_i))`.
     """
     if nu is not None and K is None:
         ratio = require_finite("nu", nu)
@@ -140,15 +148,17 @@ def shear_and_bulk_of_young(
         given = "neither" if K is None else "both"
         raise ParameterError("assumption on the other modulus", "exactly one of constant nu and constant K", given)
     bulk = require_positive("K", K, "Pa")
-    creep = creep_of(young)
-    rest = creep.instantaneous_compliance - 1.0 / (9.0 * bulk)
-    if not rest > 0.0:
+    if not young.instantaneous < 9.0 * bulk:
         expected = f"above E/9 = {young.instantaneous / 9.0:g} Pa, the instantaneous Young's modulus over nine"
         raise ParameterError("K", expected, K)
-    tripled = CreepSeries(
-        instantaneous_compliance=rest, compliances=creep.compliances, times=creep.times, fluidity=creep.fluidity
+    E = young.merged()
+    roots = secular_roots(E.times, E.moduli * E.times, E.equilibrium - 9.0 * bulk)
+    shear = PronySeries(
+        equilibrium=3.0 * bulk * E.equilibrium / (9.0 * bulk - E.equilibrium),
+        moduli=27.0 * bulk * bulk * roots.compliances(),
+        times=roots.values,
     )
-    return relaxation_of(tripled).scaled(1.0 / 3.0), PronySeries.elastic(bulk)
+    return shear, PronySeries.elastic(bulk)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -206,32 +216,64 @@ def poisson_ratio(G: PronySeries, K: PronySeries) -> PoissonSeries:
     >>> round(nu.instantaneous, 12), nu.long_term
     (0.25, 0.5)
     """
-    P = K.scaled(3.0).plus(G)
-    weights = P.moduli * P.times
-    roots = secular_roots(P.times, weights, P.equilibrium)
-    rho = roots.values
-    inverse = 1.0 / roots.distances(P.times)
-    shear = _aligned(G, P.times)
-    terms = inverse * (shear * P.times)
-    with np.errstate(over="ignore"):
-        compliances = 1.0 / (rho * ((inverse * inverse) @ weights))
-        amplitudes = 1.5 * compliances * (terms.sum(axis=1) + G.equilibrium)
-        noise = 1.5 * compliances * (np.abs(terms).sum(axis=1) + G.equilibrium) * _ROUNDING
-    kept = np.abs(amplitudes) > noise
-    if P.equilibrium > 0.0:
+    roots = _roots_of_sum(1.0, G, 3.0, K)
+    if roots.end > 0.0:
         long_term = _ratio_of(G.equilibrium, K.equilibrium)
     else:
         long_term = _ratio_of(float(G.moduli @ G.times), float(K.moduli @ K.times))
     return PoissonSeries(
         instantaneous=_ratio_of(G.instantaneous, K.instantaneous),
         long_term=long_term,
-        amplitudes=amplitudes[kept],
-        times=rho[kept],
+        amplitudes=1.5 * roots.first * roots.compliances,
+        times=roots.times,
     )
 
 
 def _ratio_of(G: float, K: float) -> float:
     return (3.0 * K - 2.0 * G) / (2.0 * (3.0 * K + G))
+
+
+class _SumRoots(NamedTuple):
+    """The sum ``P = b A + a B`` of two moduli, and its roots where the two cancel, not where both vanish."""
+
+    poles: FloatArray  # times of P, shape (n,)
+    A: FloatArray  # moduli of A at these poles, zero where it has no term, shape (n,)
+    B: FloatArray  # moduli of B, likewise
+    end: float  # equilibrium modulus of P
+    times: FloatArray  # the roots, shape (m,)
+    compliances: FloatArray  # compliances of P at its roots, shape (m,)
+    first: FloatArray  # b A at the roots, which is -a B there, shape (m,)
+
+
+def _roots_of_sum(b: float, first: PronySeries, a: float, second: PronySeries) -> _SumRoots:
+    P = first.scaled(b).plus(second.scaled(a))
+    roots = secular_roots(P.times, P.moduli * P.times, P.equilibrium)
+    inverse = 1.0 / roots.distances()
+    A, B = _aligned(first, P.times), _aligned(second, P.times)
+    terms_A, terms_B = b * inverse * (A * P.times), a * inverse * (B * P.times)
+    size_A = np.abs(terms_A).sum(axis=1) + b * first.equilibrium
+    size_B = np.abs(terms_B).sum(axis=1) + a * second.equilibrium
+    at_root = np.where(  # the two are equal but for rounding: take the one with less of it
+        size_A <= size_B,
+        terms_A.sum(axis=1) + b * first.equilibrium,
+        -(terms_B.sum(axis=1) + a * second.equilibrium),
+    )
+    compliances = roots.compliances()
+    kept = (np.abs(at_root) > _ROUNDING * np.minimum(size_A, size_B)) & (compliances > 0.0)
+    return _SumRoots(P.times, A, B, P.equilibrium, roots.values[kept], compliances[kept], at_root[kept])
+
+
+def _in_line(a: float, first: PronySeries, b: float, second: PronySeries) -> PronySeries:
+    """Modulus `M` of two moduli in line, ``1/M = a/A + b/B``."""
+    roots = _roots_of_sum(b, first, a, second)
+    shared = roots.A * roots.B / (b * roots.A + a * roots.B)
+    both = shared > 0.0
+    end = first.equilibrium * second.equilibrium / roots.end if roots.end > 0.0 else 0.0
+    return PronySeries(
+        equilibrium=end,
+        moduli=np.concatenate([shared[both], roots.first**2 * roots.compliances / (a * b)]),
+        times=np.concatenate([roots.poles[both], roots.times]),
+    )
 
 
 def _aligned(series: PronySeries, times: FloatArray) -> FloatArray:
@@ -242,21 +284,3 @@ def _aligned(series: PronySeries, times: FloatArray) -> FloatArray:
     nearest = np.where(series.times - times[below] < times[above] - series.times, below, above)
     np.add.at(moduli, nearest, series.moduli)
     return moduli
-
-
-def _reciprocal_sum(first: tuple[float, PronySeries], second: tuple[float, PronySeries]) -> PronySeries:
-    """Modulus whose reciprocal is the weighted sum of the reciprocals of two series."""
-    (a, A), (b, B) = first, second
-    if _proportional(A, B):
-        return A.scaled(1.0 / (a + b * (A.instantaneous / B.instantaneous)))
-    return relaxation_of(creep_of(A).scaled(a).plus(creep_of(B).scaled(b)))
-
-
-def _proportional(A: PronySeries, B: PronySeries) -> bool:
-    """Whether two series share times and fractions to rounding."""
-    if A.times.size != B.times.size or not np.array_equal(A.times, B.times):
-        return False
-    factor = A.instantaneous / B.instantaneous
-    unlike = np.abs(A.moduli - factor * B.moduli) > _ROUNDING * A.moduli
-    unlike_end = abs(A.equilibrium - factor * B.equilibrium) > _ROUNDING * A.equilibrium
-    return not (unlike_end or unlike.any())

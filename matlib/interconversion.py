@@ -33,12 +33,18 @@ class SecularRoots(NamedTuple):
 
     Parameters
     ----------
+    poles : ndarray, shape (n,)
+        Poles of the equation.
+    leading : float
+        Size of its leading coefficient for large `x`: the constant, or the sum of the weights where that is zero.
     base : ndarray, shape (m,)
-        The pole nearest to each root.
+        The pole nearest to each root, or zero.
     offset : ndarray, shape (m,)
-        Signed distance of the root from that pole, to full relative precision, however small.
+        Signed distance of the root from it, to full relative precision, however small.
     """
 
+    poles: FloatArray
+    leading: float
     base: FloatArray
     offset: FloatArray
 
@@ -47,13 +53,32 @@ class SecularRoots(NamedTuple):
         """The roots as plain numbers, shape (m,); a root very near to its pole rounds to it."""
         return self.base + self.offset
 
-    def distances(self, poles: FloatArray) -> FloatArray:
-        """``poles - root`` without cancellation, shape (m, n), for the poles of the equation itself."""
-        return poles - self.base[:, np.newaxis] - self.offset[:, np.newaxis]
+    def distances(self) -> FloatArray:
+        """``poles - root`` without cancellation, shape (m, n)."""
+        return self.poles - self.base[:, np.newaxis] - self.offset[:, np.newaxis]
+
+    def compliances(self) -> FloatArray:
+        r"""Weights :math:`1/(x_i h'(x_i))` of the reciprocal function, shape (m,).
+
+        The compliances of the creep series, where ``h`` is the transform of a relaxation modulus.
+
+        Notes
+        -----
+        From the product form :math:`h'(x_i) = c \prod_{k\ne i}(x_i - x_k)/\prod_j(x_i - p_j)`, in which every factor
+        has full relative precision: the weights are then those of one equation that has all the computed roots exactly,
+        and that differs from the given one by some roundings. The sum of ``u_j/(p_j - x)^2`` lacks that where a weak
+        pole happens to lie near a root of the rest (M. Gu, S. C. Eisenstat, SIAM J. Matrix Anal. Appl. 15 (1994)
+        1266-1276; from memory).
+        """
+        factors = np.abs(self.distances())
+        between = np.subtract.outer(self.base, self.base) + np.subtract.outer(self.offset, self.offset)
+        np.fill_diagonal(between, 1.0)
+        factors[:, : self.base.size] /= np.abs(between)
+        return np.prod(factors, axis=1) / (self.values * self.leading)
 
 
 def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> SecularRoots:
-    r"""All roots of :math:`h(x) = c + \sum_j u_j/(p_j - x)` that lie above the first pole.
+    r"""All positive roots of :math:`h(x) = c + \sum_j u_j/(p_j - x)`.
 
     Parameters
     ----------
@@ -62,12 +87,12 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
     weights : ndarray, shape (n,)
         Weights :math:`u_j`, ``> 0``.
     constant : float
-        Constant :math:`c`, ``>= 0``.
+        Constant :math:`c`. Where it is negative, so must be ``h(0)``.
 
     Returns
     -------
     roots : SecularRoots
-        One root in each gap, and one beyond the last pole where ``constant > 0``.
+        One root in each gap; one beyond the last pole where ``constant > 0``, one below the first where it is negative.
 
     Notes
     -----
@@ -81,17 +106,17 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
     [2.0]
     """
     if poles.size == 0:
-        return SecularRoots(poles, poles)
+        return SecularRoots(poles, abs(constant), poles, poles)
     total = float(weights.sum())
     u = weights / total
     c = constant / total
 
-    gaps = np.diff(poles)
-    middle = SecularRoots(poles[:-1], 0.5 * gaps)
-    rises = c + (1.0 / middle.distances(poles)) @ u >= 0.0  # the root is in the lower half of its gap
-    base = np.where(rises, poles[:-1], poles[1:])
-    sign = np.where(rises, 1.0, -1.0)
-    reach = 0.5 * gaps
+    edges = np.concatenate([[0.0], poles]) if c < 0.0 else poles
+    reach = 0.5 * np.diff(edges)
+    middle = poles - edges[:-1, np.newaxis] - reach[:, np.newaxis]
+    is_lower = c + (1.0 / middle) @ u >= 0.0  # h rises: the root is in the lower half of its gap
+    base = np.where(is_lower, edges[:-1], edges[1:])
+    sign = np.where(is_lower, 1.0, -1.0)
     if c > 0.0:
         # h(x) >= c - 1/(x - p_n) beyond the last pole p_n, so the root is at most 1/c away from it
         base = np.append(base, poles[-1])
@@ -100,7 +125,7 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
 
     low = np.full(base.size, _TINY).view(np.int64)
     high = np.maximum(reach, _TINY).view(np.int64)
-    from_base = SecularRoots(base, np.zeros(base.size)).distances(poles)
+    from_base = poles - base[:, np.newaxis]
     with np.errstate(over="ignore"):
         while np.any(high - low > 1):
             trial = low + (high - low) // 2
@@ -109,7 +134,7 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
             too_near = sign * h < 0.0
             low = np.where(too_near, trial, low)
             high = np.where(too_near, high, trial)
-    return SecularRoots(base, sign * high.view(np.float64))
+    return SecularRoots(poles, abs(constant) if constant else total, base, sign * high.view(np.float64))
 
 
 def creep_of(series: PronySeries) -> CreepSeries:
@@ -129,7 +154,7 @@ def creep_of(series: PronySeries) -> CreepSeries:
     Notes
     -----
     :math:`D_g = 1/M_0`, :math:`D_i = 1/(\rho_i f'(\rho_i))` with :math:`f' = \sum_j M_j\tau_j/(\tau_j - x)^2`, and
-    :math:`\phi = 1/\sum_j M_j\tau_j` for a liquid. Every sum is of positive numbers.
+    :math:`\phi = 1/\sum_j M_j\tau_j` for a liquid.
 
     Examples
     --------
@@ -138,10 +163,9 @@ def creep_of(series: PronySeries) -> CreepSeries:
     ([15.0], [0.666666666667])
     """
     merged = series.merged()
-    weights = merged.moduli * merged.times
-    roots = secular_roots(merged.times, weights, merged.equilibrium)
+    roots = secular_roots(merged.times, merged.moduli * merged.times, merged.equilibrium)
     rho = roots.values
-    compliances = rho / _squared_sum(roots, merged.times, weights)
+    compliances = roots.compliances()
     kept = compliances > 0.0
     viscosity = merged.viscosity
     return CreepSeries(
@@ -180,18 +204,12 @@ def relaxation_of(creep: CreepSeries) -> PronySeries:
     poles = np.concatenate([[0.0], merged.times])
     weights = np.concatenate([[merged.instantaneous_compliance], merged.compliances])
     roots = secular_roots(poles, weights, merged.fluidity)
-    moduli = 1.0 / _squared_sum(roots, poles, weights)
+    tau = roots.values
+    moduli = roots.compliances() / tau
     kept = moduli > 0.0
     long_term = merged.long_term_compliance
     return PronySeries(
         equilibrium=0.0 if long_term is None else 1.0 / long_term,
         moduli=moduli[kept],
-        times=roots.values[kept],
+        times=tau[kept],
     )
-
-
-def _squared_sum(roots: SecularRoots, poles: FloatArray, weights: FloatArray) -> FloatArray:
-    """``x^2 h'(x)`` at the roots, shape (m,), where ``h'`` is the sum of ``u_j/(p_j - x)^2``."""
-    with np.errstate(over="ignore"):
-        ratios = roots.values[:, np.newaxis] / roots.distances(poles)
-        return (ratios * ratios) @ weights
