@@ -10,9 +10,10 @@ import numpy.typing as npt
 
 from matlib.errors import ParameterError
 
-__all__ = ["FloatArray", "frozen", "require_finite", "require_positive"]
+__all__ = ["BoolArray", "FloatArray", "frozen", "require_finite", "require_positive"]
 
 FloatArray = npt.NDArray[np.float64]
+BoolArray = npt.NDArray[np.bool_]
 
 
 def frozen(values: npt.ArrayLike | Iterable[float]) -> FloatArray:

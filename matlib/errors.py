@@ -9,7 +9,9 @@ __all__ = [
     "CardproofError",
     "ConversionError",
     "Fault",
+    "FaultyInputError",
     "FileError",
+    "FilesError",
     "ParameterError",
     "PoleError",
     "ShiftRangeError",
@@ -31,6 +33,10 @@ def both_scales(T: float) -> str:
 
 class CardproofError(Exception):
     """Base of all errors that are raised on purpose; never raised itself."""
+
+    def lines(self) -> list[str]:
+        """One line a fault, for a terminal."""
+        return [f"cardproof: {self}"]
 
 
 class ParameterError(CardproofError, ValueError):
@@ -160,3 +166,33 @@ class FileError(CardproofError, ValueError):
 
     def __str__(self) -> str:
         return "\n".join(self.lines())
+
+
+class FilesError(CardproofError, ValueError):
+    """Faults of several files at once."""
+
+    def __init__(self, errors: Sequence[FileError]) -> None:
+        self.errors = tuple(errors)
+        super().__init__(self.errors)
+
+    def lines(self) -> list[str]:
+        """One line a fault, its file named in each."""
+        return [line for error in self.errors for line in error.lines()]
+
+    def __str__(self) -> str:
+        return "\n".join(self.lines())
+
+
+class FaultyInputError(CardproofError, ValueError):
+    """Faults found before the file's name is known; whoever knows the name makes it a `FileError`."""
+
+    def __init__(self, faults: Sequence[Fault]) -> None:
+        self.faults = tuple(faults)
+        super().__init__(self.faults)
+
+    def __str__(self) -> str:
+        return "\n".join(str(fault) for fault in self.faults)
+
+    def in_file(self, file: str) -> FileError:
+        """Same faults, the file named."""
+        return FileError(file, self.faults)

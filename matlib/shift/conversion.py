@@ -12,7 +12,7 @@ from matlib.arrays import FloatArray, require_positive
 from matlib.errors import ConversionError, ParameterError, both_scales
 from matlib.shift.arrhenius import Arrhenius
 from matlib.shift.base import ShiftLaw
-from matlib.shift.difference import chebyshev_temperatures, largest_value
+from matlib.shift.difference import chebyshev_temperatures, largest_difference_decades, largest_value
 from matlib.shift.family import VftConstants, as_vft
 from matlib.shift.measured import MeasuredRange
 from matlib.shift.minimax import LOWEST_POLE, best_amplitude, best_pole, family_function
@@ -22,7 +22,7 @@ from matlib.shift.vft import VFT
 from matlib.shift.wlf import WLF
 from matlib.units import GAS_CONSTANT
 
-__all__ = ["TARGETS", "Conversion", "convert_law"]
+__all__ = ["TARGETS", "Conversion", "convert_law", "largest_difference_decades"]
 
 TARGETS = ("wlf", "vft", "arrhenius", "table")
 _ZERO_POLE = 1e-10  # K: a pole this near 0 K changes ln a_T by T_inf (1/T + 1/T_ref) of itself, below 1e-12 above 200 K

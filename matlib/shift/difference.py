@@ -66,7 +66,9 @@ def largest_value(f: Callable[[FloatArray], FloatArray], T: FloatArray) -> tuple
     return value, at
 
 
-def largest_difference_decades(law_a: ShiftLaw, law_b: ShiftLaw, T_low: float, T_high: float) -> tuple[float, float]:
+def largest_difference_decades(
+    law_a: ShiftLaw, law_b: ShiftLaw, T_low: float, T_high: float, *, T_common: float | None = None
+) -> tuple[float, float]:
     r"""Largest difference of :math:`\log_{10} a_T` between two laws over a temperature range.
 
     Parameters
@@ -75,6 +77,8 @@ def largest_difference_decades(law_a: ShiftLaw, law_b: ShiftLaw, T_low: float, T
         As they stand: each with its own reference temperature.
     T_low, T_high : float
         Range [K], ``T_low <= T_high``.
+    T_common : float, optional
+        Temperature [K] where both are taken as 1, whatever their references.
 
     Returns
     -------
@@ -99,7 +103,9 @@ def largest_difference_decades(law_a: ShiftLaw, law_b: ShiftLaw, T_low: float, T
     if require_positive("T_high", T_high, "K") < T_low:
         raise ParameterError("T_high", f"at or above T_low = {T_low:g} K", f"{T_high:g} K")
 
+    offset = 0.0 if T_common is None else float(law_a.ln_shift(T_common) - law_b.ln_shift(T_common))
+
     def difference(T: FloatArray) -> FloatArray:
-        return np.abs(law_a.ln_shift(T) - law_b.ln_shift(T)) / math.log(10.0)
+        return np.abs(law_a.ln_shift(T) - law_b.ln_shift(T) - offset) / math.log(10.0)
 
     return largest_value(difference, chebyshev_temperatures(T_low, T_high, _DENSE, (*law_a.knots, *law_b.knots)))

@@ -1,0 +1,192 @@
+"""The command line: arguments, files, exit codes; nothing else."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import Annotated
+
+import typer
+from typer.exceptions import TyperException
+
+from matlib.errors import CardproofError
+from matlib.version import __version__
+
+__all__ = ["app", "main"]
+
+app = typer.Typer(
+    rich_markup_mode=None,
+    pretty_exceptions_enable=False,
+    no_args_is_help=False,
+    help="Proves a linear-viscoelastic material card at one material point.",
+)
+
+CardFile = Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml.")]
+CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card files, *.card.toml.")]
+PathFile = Annotated[str, typer.Argument(metavar="PATH", help="A path file, *.path.toml.")]
+Json = Annotated[str | None, typer.Option("--json", metavar="FILE", help="Write the result as JSON; - for standard output.")]
+Plot = Annotated[str | None, typer.Option("--plot", metavar="FILE", help="Draw the result: .png, .svg or .pdf.")]
+
+
+def _version(wanted: bool) -> None:
+    if wanted:
+        typer.echo(f"cardproof {__version__}")
+        raise typer.Exit
+
+
+@app.callback()
+def root(
+    version: Annotated[
+        bool, typer.Option("--version", callback=_version, is_eager=True, help="Show the version and leave.")
+    ] = False,
+) -> None:
+    """Prove a linear-viscoelastic material card at one material point.
+
+    Exit status: 0 it holds, 1 it was checked and falls short, 2 the input or the usage is wrong.
+    """
+
+
+@app.command()
+def demo(
+    folder: Annotated[Path, typer.Argument(metavar="DIR", help="Where the files go.")] = Path("cardproof-demo"),
+    json: Json = None,
+) -> None:
+    """Run the whole job on a made-up case; its files and results go to DIR."""
+    from drivers.commands.demo import run
+
+    raise typer.Exit(run(folder, json_file=json))
+
+
+@app.command()
+def check(cards: CardFiles, json: Json = None) -> None:
+    """Is a card admissible, and does it cover its service window?
+
+    Example: cardproof check cardproof-demo/laboratory.card.toml
+    """
+    from drivers.commands.check import run
+
+    raise typer.Exit(run(cards, json_file=json))
+
+
+@app.command()
+def convert(
+    card: CardFile,
+    to: Annotated[str, typer.Option("--to", metavar="LAW", help="wlf, vft, arrhenius or table.")],
+    output: Annotated[str, typer.Option("-o", "--output", metavar="NEW", help="The card to write.")],
+    reference: Annotated[
+        str | None, typer.Option("--reference", metavar="T", help="New reference temperature, as in 25degC.")
+    ] = None,
+    span: Annotated[
+        tuple[str, str] | None, typer.Option("--range", metavar="T1 T2", help="What an inexact conversion is made for.")
+    ] = None,
+    points: Annotated[int | None, typer.Option("--points", metavar="N", help="Temperatures of a table.")] = None,
+    base: Annotated[str | None, typer.Option("--base", metavar="BASE", help="10 or e: logarithm of WLF constants.")] = None,
+    units: Annotated[
+        list[str] | None, typer.Option("--units", metavar="UNIT", help="A unit of the new card, as in K; may be repeated.")
+    ] = None,
+    json: Json = None,
+) -> None:
+    """Write a card with another shift law, reference temperature or unit.
+
+    Example: cardproof convert cardproof-demo/laboratory.card.toml --to vft --reference 25degC -o new.card.toml
+    """
+    from drivers.commands.convert import run
+
+    raise typer.Exit(
+        run(
+            card, to, output, reference=reference, span=span, points=points, base=base, units=units or [], json_file=json
+        )
+    )
+
+
+@app.command()
+def drive(
+    card: CardFile,
+    path: PathFile,
+    output: Annotated[
+        str | None, typer.Option("-o", "--output", metavar="HISTORY.csv", help="Write every kept row as CSV.")
+    ] = None,
+    shift_rule: Annotated[
+        str, typer.Option("--shift-rule", metavar="R", help="start, end, middle, mean-rate, mean-log or integrated.")
+    ] = "integrated",
+    recursion: Annotated[
+        str, typer.Option("--recursion", metavar="R", help="exponential, midpoint, trapezoidal or backward-euler.")
+    ] = "exponential",
+    keep: Annotated[
+        str, typer.Option("--keep", metavar="WHICH", help="all, ends (of segments), or a number: every n-th increment.")
+    ] = "all",
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """Stress, strain and temperature along a path.
+
+    Example: cardproof drive cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml --plot drive.png
+    """
+    from drivers.commands.drive import run
+
+    raise typer.Exit(
+        run(
+            card, path, output=output, shift_rule=shift_rule, recursion=recursion, keep=keep, plot=plot, json_file=json
+        )
+    )
+
+
+@app.command()
+def compare(
+    card_a: Annotated[str, typer.Argument(metavar="CARD_A", help="The card that counts as right.")],
+    card_b: Annotated[str, typer.Argument(metavar="CARD_B", help="The card in question.")],
+    path: Annotated[
+        list[str] | None, typer.Option("--path", metavar="PATH", help="A path file; may be repeated. Else the battery.")
+    ] = None,
+    tolerance: Annotated[
+        str, typer.Option("--tolerance", metavar="X", help="1% or 0.01 of the path's peak stress.")
+    ] = "1%",
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """Do two cards say the same thing?
+
+    Example: cardproof compare cardproof-demo/laboratory.card.toml cardproof-demo/slip.card.toml
+    """
+    from drivers.commands.compare import run
+
+    raise typer.Exit(run(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json))
+
+
+def main(arguments: list[str] | None = None) -> int:
+    """Run the command line.
+
+    Parameters
+    ----------
+    arguments : list of str, optional
+        Those of the process if left out.
+
+    Returns
+    -------
+    status : int
+        0 it holds, 1 it was checked and falls short, 2 the input or the usage is wrong; 130 when interrupted.
+    """
+    command = typer.main.get_command(app)
+    try:
+        status = command.main(arguments, prog_name="cardproof", standalone_mode=False)
+        return status if isinstance(status, int) else 0
+    except TyperException as error:
+        return _refused([f"cardproof: {error.format_message()}"])
+    except CardproofError as error:
+        return _refused(error.lines())
+    except (KeyboardInterrupt, typer.Abort):
+        return _refused(["cardproof: interrupted"], 130)
+    except BrokenPipeError:
+        return 141
+    except MemoryError:
+        return _refused(["cardproof: not enough memory; keep fewer rows, or use fewer increments"])
+
+
+def _refused(lines: list[str], status: int = 2) -> int:
+    for line in lines:
+        print(" ".join(line.split()), file=sys.stderr)
+    return status
+
+
+if __name__ == "__main__":
+    sys.exit(main())

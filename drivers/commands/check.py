@@ -1,0 +1,22 @@
+"""``cardproof check``."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from drivers.commands.inputs import read_all
+from drivers.commands.output import deliver, require_folder
+from drivers.report.data import checks_data
+from drivers.report.tables import findings_table
+from matlib.admissibility import check_card
+from matlib.card import read_card
+
+__all__ = ["run"]
+
+
+def run(files: Sequence[str], *, json_file: str | None = None) -> int:
+    """Check cards and say what was found; the faults of all unreadable files at once."""
+    require_folder(json_file)
+    results = [(card, check_card(card)) for card in read_all(read_card, files)]
+    tables = [part for card, findings in results for part in findings_table(card, findings)]
+    return deliver(checks_data(results), tables, json_file)

@@ -1,0 +1,1 @@
+"""Results in; tables, pictures and plain data out. No physics."""

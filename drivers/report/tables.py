@@ -1,0 +1,199 @@
+"""Results as tables on the terminal."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+
+from rich.console import RenderableType
+from rich.table import Table
+from rich.text import Text
+
+from drivers.history import History
+from drivers.studies.compare import Comparison, PathComparison
+from matlib.admissibility import Finding, is_admissible
+from matlib.card import Card
+from matlib.card_conversion import ConvertedCard
+from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
+from matlib.units import TIME, Unit
+
+__all__ = [
+    "CAUTION",
+    "comparison_tables",
+    "conversion_tables",
+    "findings_table",
+    "history_tables",
+    "percent",
+    "temperature_text",
+    "time_text",
+    "verdict_line",
+]
+
+CAUTION = (
+    "This checks a card at one material point, not a part; qualification, tests and licensed practice decide."
+)
+
+ROWS_SHOWN = 24
+STYLES = {"error": "bold red", "warning": "yellow", "note": "cyan"}
+
+
+def plain_table(title: str, columns: Sequence[tuple[str, str]]) -> Table:
+    """An empty table; columns are (heading, "left" or "right")."""
+    table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 2, 0, 0))
+    for heading, side in columns:
+        table.add_column(heading, justify="right" if side == "right" else "left", overflow="fold")
+    return table
+
+
+def verdict_line(holds: bool, text: str) -> Text:
+    """The verdict, first thing to be read."""
+    return Text.assemble(("holds" if holds else "falls short", "bold green" if holds else "bold red"), f": {text}")
+
+
+def percent(fraction: float) -> str:
+    """A fraction in percent, three figures."""
+    return "0 %" if fraction == 0.0 else f"{100.0 * fraction:.3g} %"
+
+
+def time_text(seconds: float) -> str:
+    """A time in the unit that suits its size.
+
+    Examples
+    --------
+    >>> time_text(5400.0), time_text(0.02)
+    ('1.5 h', '0.02 s')
+    """
+    for name, least in (("d", 2.0), ("h", 1.0), ("min", 2.0)):
+        value = TIME[name].from_si(seconds)
+        if value >= least:
+            return f"{value:.3g} {name}"
+    return f"{seconds:.3g} s"
+
+
+def temperature_text(kelvin: float, unit: Unit) -> str:
+    """A temperature in a unit."""
+    return f"{unit.from_si(kelvin):.4g} {unit.name}"
+
+
+def findings_table(card: Card, findings: Sequence[Finding]) -> list[RenderableType]:
+    """Findings of one card."""
+    counts = {severity: sum(f.severity == severity for f in findings) for severity in STYLES}
+    summary = ", ".join(f"{n} {name}{'s' if n > 1 else ''}" for name, n in counts.items() if n) or "no findings"
+    lines: list[RenderableType] = [verdict_line(is_admissible(list(findings)), f"{card.name} ({card.file}): {summary}")]
+    if findings:
+        table = plain_table("", [("severity", "left"), ("finding", "left"), ("what and what to do", "left")])
+        table.columns[0].no_wrap = table.columns[1].no_wrap = True
+        for finding in findings:
+            style = STYLES[finding.severity]
+            table.add_row(Text(finding.severity, style=style), finding.id, Text(finding.message))
+        lines.append(table)
+    return lines
+
+
+def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[RenderableType]:
+    """What a conversion made."""
+    conversion = converted.conversion
+    if conversion.exact:
+        line = verdict_line(True, f"{file} says exactly what {converted.source} says")
+    else:
+        at = "" if conversion.error_at is None else f" at {temperature_text(conversion.error_at, unit)}"
+        text = f"{file} is inexact: at most {conversion.largest_error_decades:.3g} decades of a_T off{at}"
+        if conversion.fitted_range is not None:
+            low, high = (temperature_text(T, unit) for T in conversion.fitted_range)
+            text += f", over {low} to {high}"
+        line = verdict_line(True, text)
+    table = plain_table("", [("constant", "left"), ("value", "right")])
+    for key, value in converted.shift.items():
+        shown = f"{len(value)} points" if key == "points" else f"{value:.10g}" if isinstance(value, float) else str(value)
+        table.add_row(key, shown)
+    if conversion.time_factor != 1.0:
+        table.add_row("relaxation times multiplied by", f"{conversion.time_factor:.10g}")
+    return [line, table]
+
+
+def _thinned(count: int) -> list[int]:
+    """Row numbers to show, first and last among them, -1 for a gap."""
+    if count <= ROWS_SHOWN:
+        return list(range(count))
+    half = ROWS_SHOWN // 2
+    return [*range(half), -1, *range(count - half, count)]
+
+
+def history_tables(history: History, title: str, stress: Unit, temperature: Unit) -> list[RenderableType]:
+    """A history at its rows (best kept at segment ends); only components that are not zero throughout."""
+    strains, stresses = history.strain_components, stress.from_si(history.stress_components)
+    shown = [c for c in range(6) if abs(strains[:, c]).max() > 0.0]
+    loaded = [c for c in range(6) if abs(history.stress_components[:, c]).max() > 1e-12 * (history.peak_stress or 1.0)]
+    columns = [("segment", "left"), ("time [s]", "right"), (f"temperature [{temperature.name}]", "right")]
+    columns += [(STRAIN_COMPONENTS[c], "right") for c in shown]
+    columns += [(f"{STRESS_COMPONENTS[c]} [{stress.name}]", "right") for c in loaded]
+    if history.bound is not None:
+        columns.append((f"bound [{stress.name}]", "right"))
+    table = plain_table(title, columns)
+    for row in _thinned(len(history)):
+        if row < 0:
+            table.add_row(*["..."] * len(columns))
+            continue
+        cells = [history.segment[row], f"{history.time[row]:.6g}", f"{temperature.from_si(history.temperature[row]):.4g}"]
+        cells += [f"{strains[row, c]:.5g}" for c in shown] + [f"{stresses[row, c]:.6g}" for c in loaded]
+        if history.bound is not None:
+            cells.append(f"{stress.from_si(float(history.bound[row])):.2g}")
+        table.add_row(*cells)
+    return [table]
+
+
+def comparison_tables(comparison: Comparison, a: Card, b: Card) -> list[RenderableType]:
+    """Verdict, shift laws, paths: the worst first."""
+    worst = comparison.worst
+    return [
+        verdict_line(comparison.holds, f"{a.name} and {b.name} are {_same_text(comparison, worst)}"),
+        Text(_shift_text(comparison, a.temperature_unit)),
+        _paths_table(_worst_first(comparison.paths), a),
+    ]
+
+
+def _same_text(comparison: Comparison, worst: PathComparison) -> str:
+    if comparison.same == "identical":
+        largest = max(p.rounding for p in comparison.paths)
+        return f"identical to rounding (largest difference {percent(worst.relative or 0.0)}, rounding bound {percent(largest)})"
+    if worst.relative is None:
+        return f"different: no answer on path {worst.path.name!r}"
+    text = f"{percent(worst.relative)} of the peak {worst.quantity} apart on path {worst.path.name!r}"
+    if comparison.same == "different":
+        return f"different: {text}"
+    return f"within the tolerance of {percent(comparison.tolerance)}: at most {text}"
+
+
+def _shift_text(comparison: Comparison, unit: Unit) -> str:
+    shift = comparison.shift
+    if shift.decades is None or shift.temperature is None:
+        return f"Shift laws: {shift.reason}"
+    return f"Shift laws: at most {shift.decades:.3g} decades apart, at {temperature_text(shift.temperature, unit)}"
+
+
+def _worst_first(paths: Iterable[PathComparison]) -> list[PathComparison]:
+    return sorted(paths, key=lambda p: float("-inf") if p.relative is None else -p.relative)
+
+
+def _paths_table(paths: Sequence[PathComparison], a: Card) -> Table:
+    columns = [("path", "left"), ("difference", "right"), ("of", "left"), ("segment", "left"), ("time", "right"),
+               ("temperature", "right"), ("", "left")]  # fmt: skip
+    table = plain_table("", columns)
+    for result in paths:
+        mark = Text("holds", style="green") if result.holds else Text("differs", style="red")
+        if result.identical:
+            mark = Text("identical", style="green")
+        if result.relative is None or result.at is None:
+            table.add_row(result.path.name, "no answer", "", "", "", "", mark)
+            continue
+        names = STRESS_COMPONENTS if result.quantity == "stress" else STRAIN_COMPONENTS
+        at = result.at
+        table.add_row(
+            result.path.name,
+            percent(result.relative),
+            f"peak {result.quantity}, {names[result.component]}",
+            at.segment,
+            time_text(at.time),
+            temperature_text(at.temperature, a.temperature_unit),
+            mark,
+        )
+    return table

@@ -1,0 +1,146 @@
+"""The built-in stress-update routine."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+import numpy.typing as npt
+
+from matlib.arrays import FloatArray, frozen
+from matlib.errors import ParameterError
+from matlib.material import Material
+from matlib.prony import PronySeries
+from matlib.recursion import RECURSIONS, Recursion
+from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Update
+from matlib.shift.reduced_time import SHIFT_RULES, ShiftRule
+from matlib.tensors import DEVIATORIC, IDENTITY, isotropic_stiffness
+
+__all__ = ["LinearViscoelastic"]
+
+# Beyond this ratio of reduced time to relaxation time every recursion stands at its limit; it only keeps r finite.
+LARGEST_R = 1e300
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class LinearViscoelastic(BlockRoutine):
+    r"""Isotropic linear viscoelasticity at one point.
+
+    .. math:: \sigma = \int 2 G(\xi-\xi')\, d e + \int K(\xi-\xi')\, (d\,\mathrm{tr}\,\varepsilon - 3 \alpha\, dT)\, I
+
+    Parameters
+    ----------
+    material : Material
+        What the card says.
+    recursion : Recursion, optional
+        How the integral is carried over an increment; ``exponential`` if left out.
+    shift_rule : callable, optional
+        How the reduced time of an increment is found; ``integrated`` (exact) if left out.
+
+    Notes
+    -----
+    Memory: the mechanical volume strain, then the relaxing mean stress of each bulk term, then the relaxing deviatoric
+    stress of each shear term, six numbers a component in turn. Stress is zero at the start of a path, whatever its
+    temperature.
+
+    Examples
+    --------
+    >>> from matlib.shift import NoShift
+    >>> material = Material(
+    ...     shear=PronySeries(equilibrium=1e6, moduli=[2e6], times=[5.0]),
+    ...     bulk=PronySeries.elastic(5e6), shift=NoShift())
+    >>> routine = LinearViscoelastic(material=material)
+    >>> shear = np.array([0, 0, 0, 0, 0, 0.01])
+    >>> jump = Increment(time=0.0, duration=0.0, temperature=(293.15, 293.15), strain=(np.zeros(6), shear))
+    >>> float(routine.update(jump, np.zeros(routine.memory_size)).stress[5])  # 2 G0 e
+    60000.0
+    """
+
+    material: Material
+    recursion: Recursion = field(default_factory=lambda: RECURSIONS["exponential"])
+    shift_rule: ShiftRule = field(default_factory=lambda: SHIFT_RULES["integrated"])
+
+    @property
+    def memory_size(self) -> int:
+        """One number for the volume strain, one a bulk term, six a shear term."""
+        return 1 + self.material.bulk.times.size + 6 * self.material.shear.times.size
+
+    def reduced_time(self, duration: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+        """Reduced time of increments by the shift rule of this routine [s at T_ref]."""
+        return self.shift_rule(self.material.shift, duration, T_start, T_end)
+
+    def _weights(self, series: PronySeries, dxi: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Decay and gain of each term, shape (n, terms)."""
+        with np.errstate(over="ignore", under="ignore"):
+            r = np.minimum(dxi[:, np.newaxis] / series.times, LARGEST_R)
+        return self.recursion.decay(r), self.recursion.gain(r)
+
+    def update(self, increment: Increment, memory: FloatArray) -> Update:
+        """Stress, tangent and new memory at the end of one increment.
+
+        Raises
+        ------
+        ParameterError
+            If `memory` has another length than `memory_size`, or the duration is negative or not finite.
+        ShiftRangeError
+            If the shift law has no answer at a temperature of the increment.
+        """
+        if memory.shape != (self.memory_size,):
+            raise ParameterError("memory", f"of shape ({self.memory_size},)", memory.shape)
+        if not 0.0 <= increment.duration < np.inf:
+            raise ParameterError("duration", "finite and >= 0 s", increment.duration)
+        shear, bulk = self.material.shear, self.material.bulk
+        T_start, T_end = increment.temperature
+        dxi = np.atleast_1d(self.reduced_time(increment.duration, T_start, T_end))
+        shear_decay, shear_gain = (w[0] for w in self._weights(shear, dxi))
+        bulk_decay, bulk_gain = (w[0] for w in self._weights(bulk, dxi))
+
+        p, h = memory[1 : 1 + bulk.times.size], memory[1 + bulk.times.size :].reshape(6, -1)
+        step = increment.strain[1] - increment.strain[0]
+        mechanical = step @ IDENTITY - 3.0 * self.material.expansion * (T_end - T_start)
+        theta_new = memory[0] + mechanical
+        p_new = bulk_decay * p + bulk_gain * bulk.moduli * mechanical
+        h_new = shear_decay * h + 2.0 * np.outer(DEVIATORIC @ step, shear_gain * shear.moduli)
+
+        stress = (
+            2.0 * shear.equilibrium * (DEVIATORIC @ increment.strain[1])
+            + h_new.sum(axis=1)
+            + (bulk.equilibrium * theta_new + p_new.sum()) * IDENTITY
+        )
+        tangent = isotropic_stiffness(
+            shear.equilibrium + float(shear_gain @ shear.moduli), bulk.equilibrium + float(bulk_gain @ bulk.moduli)
+        )
+        return Update(stress, tangent, np.concatenate([[theta_new], p_new, h_new.ravel()]))
+
+    def run(self, block: Block, strain: FloatArray, memory: FloatArray) -> BlockResponse:
+        """Take all increments of a block in one compiled call; `update` and mixed control give the same, one by one."""
+        from matlib.kernels import run_block
+
+        shear, bulk = self.material.shear, self.material.bulk
+        T = block.temperature
+        dxi = self.reduced_time(block.duration, T[:-1], T[1:])
+        shear_decay, shear_gain = self._weights(shear, dxi)
+        bulk_decay, bulk_gain = self._weights(bulk, dxi)
+        strain_end, theta, p = strain.copy(), memory[:1].copy(), memory[1 : 1 + bulk.times.size].copy()
+        h = memory[1 + bulk.times.size :].reshape(6, -1).copy()
+        strain_out, stress_out = np.empty_like(block.targets), np.empty_like(block.targets)
+        run_block(
+            frozen(block.targets),
+            block.stress_controlled,
+            frozen(3.0 * self.material.expansion * np.diff(T)),
+            frozen(shear_decay),
+            frozen(shear_gain),
+            frozen(bulk_decay),
+            frozen(bulk_gain),
+            shear.moduli,
+            bulk.moduli,
+            shear.equilibrium,
+            bulk.equilibrium,
+            strain_end,
+            theta,
+            h,
+            p,
+            strain_out,
+            stress_out,
+        )
+        return BlockResponse(strain_out, stress_out, np.concatenate([theta, p, h.ravel()]))
