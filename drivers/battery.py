@@ -166,7 +166,7 @@ def battery(material: Material, window: Window) -> tuple[Path, ...]:
         duration = window.time_at(share)
         for T in temperatures:
             pull = _segment("pull", duration, mode=uniaxial, strain=STRAIN)
-            paths.append(_path(f"pull in {duration:.3g} s, {_degrees(T)}", uniaxial, T, pull))
+            paths.append(_path(f"pull of {duration:.2g} s, {_degrees(T)}", uniaxial, T, pull))
     if T_low < T_high:
         paths += _thermal(window)
     return tuple(paths)
@@ -188,10 +188,10 @@ def _thermal(window: Window) -> list[Path]:
         return _segment(label, 0.0, mode=mode, temperature=T, increments=1)
 
     thermal_jump = _path(
-        "thermal jump in a hold", mode, T_mid,
+        "thermal jump", mode, T_mid,
         step, dwell("before"), jump("heat", T_high), dwell("hot"), jump("cool", T_low), dwell("cold"),
     )  # fmt: skip
     cycle = Cycle(repeat=3, segments=(ramp("heat", T_high), ramp("cool", T_low)))
-    thermal_cycle = _path("thermal cycle in a hold", mode, T_mid, step, cycle)
+    thermal_cycle = _path("thermal cycle", mode, T_mid, step, cycle)
     cooling = _path("clamped cooling", mode, T_high, step, ramp("cool", T_low), dwell("cold"))
     return [thermal_jump, thermal_cycle, cooling]

@@ -154,8 +154,8 @@ def shear_and_bulk_of_young(
     E = young.merged()
     roots = secular_roots(E.times, E.moduli * E.times, E.equilibrium - 9.0 * bulk)
     shear = PronySeries(
-        equilibrium=3.0 * bulk * E.equilibrium / (9.0 * bulk - E.equilibrium),
-        moduli=27.0 * bulk * bulk * roots.compliances(),
+        equilibrium=3.0 * bulk * (E.equilibrium / (9.0 * bulk - E.equilibrium)),
+        moduli=27.0 * bulk * (bulk * roots.compliances()),
         times=roots.values,
     )
     return shear, PronySeries.elastic(bulk)
@@ -266,12 +266,12 @@ def _roots_of_sum(b: float, first: PronySeries, a: float, second: PronySeries) -
 def _in_line(a: float, first: PronySeries, b: float, second: PronySeries) -> PronySeries:
     """Modulus `M` of two moduli in line, ``1/M = a/A + b/B``."""
     roots = _roots_of_sum(b, first, a, second)
-    shared = roots.A * roots.B / (b * roots.A + a * roots.B)
+    shared = roots.A * (roots.B / (b * roots.A + a * roots.B))
     both = shared > 0.0
-    end = first.equilibrium * second.equilibrium / roots.end if roots.end > 0.0 else 0.0
+    end = first.equilibrium * (second.equilibrium / roots.end) if roots.end > 0.0 else 0.0
     return PronySeries(
         equilibrium=end,
-        moduli=np.concatenate([shared[both], roots.first**2 * roots.compliances / (a * b)]),
+        moduli=np.concatenate([shared[both], roots.first * (roots.first * roots.compliances) / (a * b)]),
         times=np.concatenate([roots.poles[both], roots.times]),
     )
 

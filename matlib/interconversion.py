@@ -20,12 +20,13 @@ from typing import NamedTuple
 import numpy as np
 
 from matlib.arrays import FloatArray
+from matlib.errors import ParameterError
 from matlib.prony import CreepSeries, PronySeries
 
 __all__ = ["SecularRoots", "creep_of", "relaxation_of", "secular_roots"]
 
 _TINY = float(np.finfo(np.float64).tiny)
-_HUGE = 1e300
+_LONGEST = 1e300  # s
 
 
 class SecularRoots(NamedTuple):
@@ -94,6 +95,11 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
     roots : SecularRoots
         One root in each gap; one beyond the last pole where ``constant > 0``, one below the first where it is negative.
 
+    Raises
+    ------
+    ParameterError
+        If a positive constant is so small that the last root exceeds 1e300.
+
     Notes
     -----
     The terms enter with full relative precision, so each root is that of an equation whose weights differ from the
@@ -121,7 +127,9 @@ def secular_roots(poles: FloatArray, weights: FloatArray, constant: float) -> Se
         # h(x) >= c - 1/(x - p_n) beyond the last pole p_n, so the root is at most 1/c away from it
         base = np.append(base, poles[-1])
         sign = np.append(sign, 1.0)
-        reach = np.append(reach, min(1.0 / max(c, 1.0 / _HUGE), _HUGE))
+        if c * _LONGEST < 1.0:
+            raise ParameterError("long-term part", f"zero, or reached within {_LONGEST:g} s", constant)
+        reach = np.append(reach, 1.0 / c)
 
     low = np.full(base.size, _TINY).view(np.int64)
     high = np.maximum(reach, _TINY).view(np.int64)

@@ -86,7 +86,7 @@ def drive_figure(history: History, card: Card, path: Path) -> Figure:
     values = stress.from_si(history.stress_components[:, component])
     upper.plot(time, values, **FIRST)
     _finish(upper, "", label, "stress")
-    lower.plot(time, card.temperature_unit.from_si(history.temperature), **SECOND)
+    lower.plot(time, card.temperature_unit.from_si(history.temperature), color=SECOND["color"])
     _finish(lower, f"time [{unit.name}]", f"temperature [{card.temperature_unit.name}]", "temperature")
     if _log_times(history):
         upper.set_xscale("log")

@@ -9,7 +9,7 @@ from rich.table import Table
 from rich.text import Text
 
 from drivers.history import History
-from drivers.studies.compare import Comparison, PathComparison
+from drivers.studies.compare import Comparison, PathComparison, Where
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
@@ -23,6 +23,8 @@ __all__ = [
     "findings_table",
     "history_tables",
     "percent",
+    "place_text",
+    "plain_table",
     "temperature_text",
     "time_text",
     "verdict_line",
@@ -93,20 +95,20 @@ def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[R
     """What a conversion made."""
     conversion = converted.conversion
     if conversion.exact:
-        line = verdict_line(True, f"{file} says exactly what {converted.source} says")
+        line = Text.assemble(("exact", "bold green"), f": {file} says what {converted.source} says, to rounding")
     else:
         at = "" if conversion.error_at is None else f" at {temperature_text(conversion.error_at, unit)}"
-        text = f"{file} is inexact: at most {conversion.largest_error_decades:.3g} decades of a_T off{at}"
+        text = f": {file} is at most {conversion.largest_error_decades:.3g} decades of a_T off{at}"
         if conversion.fitted_range is not None:
             low, high = (temperature_text(T, unit) for T in conversion.fitted_range)
             text += f", over {low} to {high}"
-        line = verdict_line(True, text)
+        line = Text.assemble(("inexact", "bold yellow"), text)
     table = plain_table("", [("constant", "left"), ("value", "right")])
     for key, value in converted.shift.items():
         shown = f"{len(value)} points" if key == "points" else f"{value:.10g}" if isinstance(value, float) else str(value)
         table.add_row(key, shown)
     if conversion.time_factor != 1.0:
-        table.add_row("relaxation times multiplied by", f"{conversion.time_factor:.10g}")
+        table.add_row("times multiplied by", f"{conversion.time_factor:.10g}")
     return [line, table]
 
 
@@ -174,26 +176,24 @@ def _worst_first(paths: Iterable[PathComparison]) -> list[PathComparison]:
     return sorted(paths, key=lambda p: float("-inf") if p.relative is None else -p.relative)
 
 
+def place_text(at: Where, unit: Unit) -> str:
+    """Segment, time and temperature in one phrase."""
+    return f"{at.segment}, {time_text(at.time)}, {temperature_text(at.temperature, unit)}"
+
+
 def _paths_table(paths: Sequence[PathComparison], a: Card) -> Table:
-    columns = [("path", "left"), ("difference", "right"), ("of", "left"), ("segment", "left"), ("time", "right"),
-               ("temperature", "right"), ("", "left")]  # fmt: skip
+    columns = [("path", "left"), ("difference", "right"), ("in", "left"), ("largest at", "left"), ("", "left")]
     table = plain_table("", columns)
+    for column in table.columns[:3]:
+        column.no_wrap = True
     for result in paths:
         mark = Text("holds", style="green") if result.holds else Text("differs", style="red")
         if result.identical:
             mark = Text("identical", style="green")
         if result.relative is None or result.at is None:
-            table.add_row(result.path.name, "no answer", "", "", "", "", mark)
+            table.add_row(result.path.name, "no answer", "", result.reason, mark)
             continue
         names = STRESS_COMPONENTS if result.quantity == "stress" else STRAIN_COMPONENTS
-        at = result.at
-        table.add_row(
-            result.path.name,
-            percent(result.relative),
-            f"peak {result.quantity}, {names[result.component]}",
-            at.segment,
-            time_text(at.time),
-            temperature_text(at.temperature, a.temperature_unit),
-            mark,
-        )
+        where = "" if result.relative == 0.0 else place_text(result.at, a.temperature_unit)
+        table.add_row(result.path.name, percent(result.relative), names[result.component], where, mark)
     return table

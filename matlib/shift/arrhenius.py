@@ -65,5 +65,6 @@ class Arrhenius(ShiftLaw):
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end))
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)
+        ln_hot = self.ln_shift(hot)
         with np.errstate(under="ignore"):
-            return np.exp(-self.ln_shift(hot)) * mean_rate_below(cold, hot, self.B)
+            return np.exp(-ln_hot) * mean_rate_below(cold, hot, self.B)

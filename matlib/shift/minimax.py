@@ -14,7 +14,9 @@ from matlib.arrays import FloatArray
 
 __all__ = ["LOWEST_POLE", "best_amplitude", "best_pole"]
 
-LOWEST_POLE = -1e4  # K; with the pole that far down the slope of ln a_T changes by 2 % over 100 K: all but straight in T
+LOWEST_POLE = (
+    -1e4
+)  # K; with the pole that far down the slope of ln a_T changes by 2 % over 100 K: all but straight in T
 _CLOSEST = 1e-3  # K: how near the pole may come to the range
 _SCAN = 160
 _GOLDEN = 0.5 * (math.sqrt(5.0) - 1.0)

@@ -71,6 +71,7 @@ class VFT(ShiftLaw):
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end), self.T_inf)
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)
+        ln_hot = self.ln_shift(hot)
         relative = mean_rate_below(np.asarray(cold - self.T_inf), np.asarray(hot - self.T_inf), self.B)
         with np.errstate(under="ignore"):
-            return np.exp(-self.ln_shift(hot)) * relative
+            return np.exp(-ln_hot) * relative

@@ -89,6 +89,7 @@ class WLF(ShiftLaw):
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end), self.pole)
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)
+        ln_hot = self.ln_shift(hot)
         relative = mean_rate_below(self._height(cold), self._height(hot), self.ln_C1 * self.C2)
         with np.errstate(under="ignore"):
-            return np.exp(-self.ln_shift(hot)) * relative
+            return np.exp(-ln_hot) * relative

@@ -102,6 +102,13 @@ def test_shear_and_bulk_of_one_spectrum_give_that_spectrum(modulus, elastic, equ
     assert effective.instantaneous == pytest.approx(elastic(1.0, 7.0 / 3.0) * G.instantaneous, rel=2e-15)
 
 
+@pytest.mark.parametrize(("modulus", "elastic"), MODES)
+def test_the_size_of_the_moduli_does_not_matter(modulus, elastic):
+    huge, plain = modulus(SHEAR.scaled(1e200), BULK.scaled(1e200)), modulus(SHEAR, BULK)
+    np.testing.assert_allclose(huge.moduli, plain.moduli * 1e200, rtol=1e-14)
+    assert huge.instantaneous == pytest.approx(elastic(SHEAR.instantaneous, BULK.instantaneous) * 1e200, rel=1e-14)
+
+
 def test_spectra_that_differ_at_the_end_alone_are_not_taken_for_one():
     G = PronySeries(equilibrium=0.0, moduli=[1.0], times=[1.0])
     K = PronySeries(equilibrium=1e-16, moduli=[1.0], times=[1.0])

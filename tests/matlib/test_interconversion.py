@@ -6,6 +6,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from matlib.errors import ParameterError
 from matlib.interconversion import creep_of, relaxation_of, secular_roots
 from matlib.prony import CreepSeries, PronySeries
 
@@ -180,6 +181,19 @@ def test_times_a_few_roundings_apart_still_give_the_right_creep(roundings):
     series = PronySeries(equilibrium=0.5, moduli=[1.0, 2.0, 1.0], times=times)
     for exponent in (-3.0, -1.0, 0.0, 1.0, 3.0):
         assert carson_product(series, creep_of(series), exponent) == pytest.approx(1.0, abs=1e-14)
+
+
+def test_a_long_term_modulus_too_small_to_be_reached_is_refused():
+    with pytest.raises(ParameterError, match=r"long-term part.*zero, or reached within 1e\+300 s \(got 1e-300\)"):
+        creep_of(PronySeries(equilibrium=1e-300, moduli=[1e9], times=[1.0]))
+
+
+def test_moduli_and_times_of_any_size_are_interconverted():
+    series = PronySeries(equilibrium=1.0, moduli=[2.0, 3.0], times=[1.0, 20.0])
+    extreme = series.scaled(1e140).slowed(1e-160)
+    creep, plain = creep_of(extreme), creep_of(series)
+    np.testing.assert_allclose(creep.times, plain.times * 1e-160, rtol=4e-15)
+    np.testing.assert_allclose(creep.compliances, plain.compliances * 1e-140, rtol=4e-15)
 
 
 def test_an_elastic_modulus_and_its_compliance_are_reciprocal():

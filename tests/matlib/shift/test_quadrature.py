@@ -1,3 +1,4 @@
+import itertools
 import math
 
 import numpy as np
@@ -36,7 +37,7 @@ def test_ramps_are_split_at_the_knots_inside_them_only():
             return math.exp(-np.interp(low, knots, [0.0, 3.0, 1.0]))
         total = 0.0
         cuts = sorted({low, high, *(k for k in knots if low < k < high)})
-        for a, b in zip(cuts, cuts[1:], strict=False):
+        for a, b in itertools.pairwise(cuts):
             ya, yb = np.interp([a, b], knots, [0.0, 3.0, 1.0])
             total += (b - a) * (math.exp(-ya) if ya == yb else (math.exp(-ya) - math.exp(-yb)) / (yb - ya))
         return total / (high - low)

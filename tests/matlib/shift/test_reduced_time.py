@@ -115,7 +115,7 @@ def test_durations_that_are_none_are_refused(rule, dt):
 def test_a_reduced_time_that_no_double_holds_is_refused(rule):
     law = VFT(B=1e5, T_inf=100.0, T_ref=200.0)
     with pytest.raises(ParameterError, match=r"`dt` must be short enough .*1/a_T goes up to"):
-        SHIFT_RULES[rule](law, 1e30, 275.0, 275.0)  # ln a_T = -429, a duration of e^69
+        SHIFT_RULES[rule](law, 1e30, 420.0, 420.0)  # ln a_T = -687.5, a duration of e^69
 
 
 @pytest.mark.parametrize("rule", RULES)

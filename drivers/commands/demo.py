@@ -1,0 +1,127 @@
+"""``cardproof demo``: the whole job on a made-up case."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from importlib import resources
+from pathlib import Path
+
+from rich.console import RenderableType
+from rich.text import Text
+
+from drivers.commands.compare import compare_cards
+from drivers.commands.output import deliver, require_folder, save_figure
+from drivers.history import csv_text
+from drivers.path_file import read_path
+from drivers.point import drive
+from drivers.report.data import checks_data, comparison_data, envelope, json_text
+from drivers.report.tables import CAUTION, findings_table, percent, plain_table
+from drivers.studies.compare import Comparison
+from matlib.admissibility import check_card
+from matlib.card import Card, read_card
+from matlib.card_conversion import convert_card
+from matlib.documents import write_atomically
+from matlib.errors import Fault, FileError
+from matlib.units import STRESS, TEMPERATURE
+from matlib.viscoelastic import LinearViscoelastic
+
+__all__ = ["run"]
+
+SHIPPED = ("laboratory.card.toml", "slip.card.toml", "thermal-cycles.path.toml")
+TOLERANCE = 0.01
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Case:
+    """A card that is held against the laboratory's, and what is known of it."""
+
+    file: str
+    made: str
+    expected: str
+
+
+CASES = (
+    _Case(file="converted.card.toml", made="cardproof convert --to vft, a right conversion", expected="identical"),
+    _Case(file="slip.card.toml", made="converted by hand, with a slip", expected="different"),
+    _Case(file="arrhenius.card.toml", made="cardproof convert --to arrhenius, the best plain Arrhenius fit", expected="different"),
+)
+
+
+def run(folder: Path, *, json_file: str | None = None) -> int:
+    """Write the demo's files to a folder, run check, convert, drive and compare on them, and show the verdicts."""
+    require_folder(json_file)
+    _make_folder(folder)
+    for name in SHIPPED:
+        content = resources.files("drivers.demo").joinpath(name).read_text(encoding="utf-8")
+        write_atomically(folder / name, content)
+    laboratory = read_card(folder / "laboratory.card.toml")
+    findings = check_card(laboratory)
+    write_atomically(folder / "check.json", json_text(checks_data([(laboratory, findings)])))
+    _convert(laboratory, folder)
+    _drive(laboratory, folder)
+    comparisons = [(case, _compare(laboratory, folder, case)) for case in CASES]
+    tables: list[RenderableType] = [
+        Text("1. Is the laboratory's card sane?  cardproof check", style="bold"),
+        *findings_table(laboratory, findings),
+        Text("\n2. Do the cards made from it say the same?  cardproof convert, cardproof compare", style="bold"),
+        *(Text(f"   {case.file}: {case.made}") for case in CASES),
+        Text("   Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"),
+        _verdicts(comparisons, laboratory),
+        Text(f"\nCards, path, history.csv, pictures and results in JSON are in {folder}. The case is invented."),
+        Text(CAUTION, style="italic"),
+    ]
+    as_expected = all(comparison.same == case.expected for case, comparison in comparisons)
+    cases = [
+        {"file": case.file, "same": comparison.same, "relative": comparison.worst.relative}
+        for case, comparison in comparisons
+    ]
+    return deliver(envelope("demo", as_expected, folder=str(folder), cases=cases), tables, json_file)
+
+
+def _make_folder(folder: Path) -> None:
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        found = error.strerror or str(error)
+        raise FileError(str(folder), [Fault(key="folder", found=found, expected="a folder that can be made")]) from None
+
+
+def _convert(laboratory: Card, folder: Path) -> None:
+    """The right conversion, as a simulation group may want it: offset Arrhenius at 25 degC, in Pa and K; and a poor one."""
+    units = (STRESS["Pa"], TEMPERATURE["K"])
+    right = convert_card(laboratory, "vft", T_ref=298.15, units=units)
+    write_atomically(folder / "converted.card.toml", right.text())
+    write_atomically(folder / "arrhenius.card.toml", convert_card(laboratory, "arrhenius").text())
+
+
+def _drive(laboratory: Card, folder: Path) -> None:
+    from drivers.report.plots import drive_figure
+
+    path = read_path(folder / "thermal-cycles.path.toml")
+    history = drive(LinearViscoelastic(material=laboratory.material()), path)
+    text = csv_text(history, stress=laboratory.stress_unit, temperature=laboratory.temperature_unit)
+    write_atomically(folder / "history.csv", text)
+    save_figure(drive_figure(history, laboratory, path), str(folder / "thermal-cycles.png"))
+
+
+def _compare(laboratory: Card, folder: Path, case: _Case) -> Comparison:
+    from drivers.report.plots import comparison_figure
+
+    other = read_card(folder / case.file)
+    comparison = compare_cards(laboratory, other, [], TOLERANCE)
+    stem = case.file.partition(".")[0]
+    write_atomically(folder / f"compare-{stem}.json", json_text(comparison_data(comparison, laboratory, other)))
+    save_figure(comparison_figure(comparison, laboratory, other), str(folder / f"compare-{stem}.png"))
+    return comparison
+
+
+def _verdicts(comparisons: list[tuple[_Case, Comparison]], laboratory: Card) -> RenderableType:
+    columns = [("card", "left"), ("largest stress error", "right"), ("on path", "left"), ("says the same?", "left")]
+    table = plain_table("", columns)
+    for case, comparison in comparisons:
+        result = max((p for p in comparison.paths if p.quantity == "stress"), key=lambda p: p.relative or 0.0)
+        style = "bold green" if comparison.holds else "bold red"
+        error = "no answer" if result.relative is None else percent(result.relative)
+        on = "(rounding)" if result.identical else result.path.name
+        table.add_row(case.file, error, on, Text(comparison.same, style=style))
+    return table
