@@ -19,7 +19,8 @@ from typing import NamedTuple
 import numpy as np
 import numpy.typing as npt
 
-from matlib.arrays import FloatArray, frozen, require_finite, require_positive
+from matlib.arrays import FloatArray, frozen, require_positive
+from matlib.elastic import require_poisson_ratio
 from matlib.errors import ParameterError
 from matlib.interconversion import secular_roots
 from matlib.prony import PronySeries
@@ -140,9 +141,7 @@ def shear_and_bulk_of_young(
     time of `young`, and :math:`G_i = 27 K^2/(\tau_i E'(\tau_i))`.
     """
     if nu is not None and K is None:
-        ratio = require_finite("nu", nu)
-        if not -1.0 < ratio < 0.5:
-            raise ParameterError("nu", "above -1 and below 0.5", nu)
+        ratio = require_poisson_ratio(nu)
         return young.scaled(0.5 / (1.0 + ratio)), young.scaled(1.0 / (3.0 * (1.0 - 2.0 * ratio)))
     if K is None or nu is not None:
         given = "neither" if K is None else "both"

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from matlib.arrays import require_finite, require_positive
 from matlib.errors import ParameterError
 
-__all__ = ["ElasticConstants", "elastic_constants"]
+__all__ = ["ElasticConstants", "elastic_constants", "require_poisson_ratio"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -70,25 +70,28 @@ def elastic_constants(
     return ElasticConstants(**{**values, **given})
 
 
-def _checked(name: str, value: float) -> float:
-    if name != "nu":
-        return require_positive(name, value, "Pa")
-    number = require_finite(name, value)
+def require_poisson_ratio(value: float) -> float:
+    """Return `value` as a float, or raise `ParameterError` where it is not in (-1, 0.5)."""
+    number = require_finite("nu", value)
     if not -1.0 < number < 0.5:
         raise ParameterError("nu", "above -1 and below 0.5", value)
     return number
 
 
+def _checked(name: str, value: float) -> float:
+    return require_poisson_ratio(value) if name == "nu" else require_positive(name, value, "Pa")
+
+
 def _from_E_and_G(E: float, G: float) -> dict[str, float]:
     if not E < 3.0 * G:
         raise ParameterError("E", f"below 3 G = {3.0 * G:g} Pa, where nu would be 0.5", E)
-    return {"K": E * G / (3.0 * (3.0 * G - E)), "nu": _checked("nu", (E - 2.0 * G) / (2.0 * G))}
+    return {"K": E * G / (3.0 * (3.0 * G - E)), "nu": require_poisson_ratio((E - 2.0 * G) / (2.0 * G))}
 
 
 def _from_E_and_K(E: float, K: float) -> dict[str, float]:
     if not E < 9.0 * K:
         raise ParameterError("E", f"below 9 K = {9.0 * K:g} Pa, where nu would be -1", E)
-    return {"G": 3.0 * K * E / (9.0 * K - E), "nu": _checked("nu", (3.0 * K - E) / (6.0 * K))}
+    return {"G": 3.0 * K * E / (9.0 * K - E), "nu": require_poisson_ratio((3.0 * K - E) / (6.0 * K))}
 
 
 def _from_E_and_nu(E: float, nu: float) -> dict[str, float]:
@@ -96,7 +99,7 @@ def _from_E_and_nu(E: float, nu: float) -> dict[str, float]:
 
 
 def _from_G_and_K(G: float, K: float) -> dict[str, float]:
-    return {"E": 9.0 * K * G / (3.0 * K + G), "nu": _checked("nu", (3.0 * K - 2.0 * G) / (2.0 * (3.0 * K + G)))}
+    return {"E": 9.0 * K * G / (3.0 * K + G), "nu": require_poisson_ratio((3.0 * K - 2.0 * G) / (2.0 * (3.0 * K + G)))}
 
 
 def _from_G_and_nu(G: float, nu: float) -> dict[str, float]:
