@@ -15,6 +15,8 @@ from matlib.shift.domain import check_ln_shift, check_temperatures
 
 __all__ = ["Polynomial"]
 
+_FARTHEST = 1e6  # K: no temperature of the trade is farther from T_ref
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Polynomial(ShiftLaw):
@@ -65,9 +67,20 @@ class Polynomial(ShiftLaw):
 
 def _turning_points(coefficients: FloatArray, T_ref: float) -> tuple[float, ...]:
     """Temperatures above 0 K where the derivative is zero. A double root that rounding made complex is kept."""
-    slope = np.trim_zeros(coefficients * np.arange(1.0, coefficients.size + 1.0), "b")
+    slope = coefficients * np.arange(1.0, coefficients.size + 1.0)
+    while slope.size and _is_negligible(slope):
+        slope = slope[:-1]
     if slope.size < 2:
         return ()
     roots = np.roots(slope[::-1])
     real = roots.real[np.abs(roots.imag) <= 1e-6 * np.abs(roots)] + T_ref
     return tuple(float(T) for T in np.unique(real) if T > 0.0)
+
+
+def _is_negligible(slope: FloatArray) -> bool:
+    """Whether the last term is zero, or lost in rounding `_FARTHEST` from T_ref: its root would overflow."""
+    if slope[-1] == 0.0:
+        return True
+    k = np.flatnonzero(slope)
+    size = np.log(np.abs(slope[k])) + k * math.log(_FARTHEST)
+    return bool(size[-1] < size.max() + math.log(np.finfo(np.float64).eps))
