@@ -1,6 +1,8 @@
 """What every shift law keeps to."""
 
 import math
+import subprocess
+import sys
 
 import numpy as np
 import pytest
@@ -64,6 +66,13 @@ def test_temperatures_that_are_none_are_refused(law, T):
 def test_laws_cannot_be_changed(law):
     with pytest.raises((AttributeError, TypeError)):  # CPython says TypeError where T_ref is a property
         law.T_ref = 300.0
+
+
+def test_the_laws_are_there_without_loading_a_heavy_library():
+    heavy = "{'scipy', 'numba', 'matplotlib', 'importlib.metadata'}"
+    code = f"import sys, matlib.shift; sys.exit(str({heavy} & set(sys.modules)) if {heavy} & set(sys.modules) else 0)"
+    run = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
+    assert (run.returncode, run.stderr) == (0, "")
 
 
 def test_a_class_without_a_formula_is_no_law():

@@ -162,8 +162,8 @@ def test_the_two_constant_fit_is_as_good_as_a_global_search_finds(source, to):
     target = source.ln_shift(T)
 
     def worst(x):
-        law = VFT(B=math.exp(x[0]), T_inf=RANGE[0] - math.exp(x[1]), T_ref=source.T_ref)
-        return np.abs(law.ln_shift(T) - target).max() / LN10
+        B, T_inf = math.exp(x[0]), RANGE[0] - math.exp(x[1])
+        return np.abs(B / (T - T_inf) - B / (source.T_ref - T_inf) - target).max() / LN10
 
     search = scipy.optimize.differential_evolution(worst, [(5.0, 12.0), (0.0, 8.0)], seed=1, tol=1e-10, maxiter=300)
     polished = scipy.optimize.minimize(worst, search.x, method="Nelder-Mead", options={"xatol": 1e-9, "fatol": 1e-12})
