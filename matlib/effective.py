@@ -215,7 +215,7 @@ def poisson_ratio(G: PronySeries, K: PronySeries) -> PoissonSeries:
     >>> round(nu.instantaneous, 12), nu.long_term
     (0.25, 0.5)
     """
-    roots = _roots_of_sum(1.0, G, 3.0, K)
+    roots = roots_of_sum(1.0, G, 3.0, K)
     if roots.end > 0.0:
         long_term = _ratio_of(G.equilibrium, K.equilibrium)
     else:
@@ -232,7 +232,7 @@ def _ratio_of(G: float, K: float) -> float:
     return (3.0 * K - 2.0 * G) / (2.0 * (3.0 * K + G))
 
 
-class _SumRoots(NamedTuple):
+class SumRoots(NamedTuple):
     """The sum ``P = b A + a B`` of two moduli, and its roots where the two cancel, not where both vanish."""
 
     poles: FloatArray  # times of P, shape (n,)
@@ -244,7 +244,7 @@ class _SumRoots(NamedTuple):
     first: FloatArray  # b A at the roots, which is -a B there, shape (m,)
 
 
-def _roots_of_sum(b: float, first: PronySeries, a: float, second: PronySeries) -> _SumRoots:
+def roots_of_sum(b: float, first: PronySeries, a: float, second: PronySeries) -> SumRoots:
     P = first.scaled(b).plus(second.scaled(a))
     roots = secular_roots(P.times, P.moduli * P.times, P.equilibrium)
     inverse = 1.0 / roots.distances()
@@ -259,12 +259,12 @@ def _roots_of_sum(b: float, first: PronySeries, a: float, second: PronySeries) -
     )
     compliances = roots.compliances()
     kept = (np.abs(at_root) > _ROUNDING * np.minimum(size_A, size_B)) & (compliances > 0.0)
-    return _SumRoots(P.times, A, B, P.equilibrium, roots.values[kept], compliances[kept], at_root[kept])
+    return SumRoots(P.times, A, B, P.equilibrium, roots.values[kept], compliances[kept], at_root[kept])
 
 
 def _in_line(a: float, first: PronySeries, b: float, second: PronySeries) -> PronySeries:
     """Modulus `M` of two moduli in line, ``1/M = a/A + b/B``."""
-    roots = _roots_of_sum(b, first, a, second)
+    roots = roots_of_sum(b, first, a, second)
     shared = roots.A * (roots.B / (b * roots.A + a * roots.B))
     both = shared > 0.0
     end = first.equilibrium * (second.equilibrium / roots.end) if roots.end > 0.0 else 0.0
