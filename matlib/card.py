@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import dataclass
@@ -10,20 +11,20 @@ from typing import Any
 
 import numpy as np
 
+from matlib.arrays import frozen
+from matlib.card_faults import constant_faults, contradictions
 from matlib.card_schema import CardDocument, PronyTable
-from matlib.documents import read_toml, shown, validated
+from matlib.documents import read_toml, validated
 from matlib.effective import shear_and_bulk_of_young
 from matlib.elastic import ElasticConstants, elastic_constants
 from matlib.errors import Fault, FaultyInputError, FileError, ParameterError, ShiftRangeError
 from matlib.material import Material
 from matlib.prony import PronySeries
-from matlib.shift import ShiftLaw
-from matlib.shift_tables import CrossoverTable, LawTable, RangeTable, build_shift, parse_shift, split_range
+from matlib.shift import PluginError, ShiftLaw
+from matlib.shift_tables import LawTable, RangeTable, build_shift, parse_shift, split_range
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
-__all__ = ["Card", "constant_faults", "read_card"]
-
-SERIES = ("shear", "bulk", "young")
+__all__ = ["Card", "plain", "read_card"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -93,6 +94,10 @@ class Card:
             return build_shift(self.law_table, self.limits, self.temperature_unit)
         raise FileError(self.file, faults)
 
+    def constant_faults(self) -> list[tuple[str, Fault]]:
+        """What the physics forbids among the constants as they are written, with the id of the finding."""
+        return constant_faults(self.document, self.law_table, self.limits)
+
     def material(self) -> Material:
         """Make the material of this card, in SI units.
 
@@ -105,16 +110,17 @@ class Card:
         FileError
             With everything that keeps the constants from being a material.
         """
-        faults = [fault for _, fault in constant_faults(self)]
-        if faults:
-            raise FileError(self.file, faults)
+        faults = [fault for _, fault in self.constant_faults()]
+        faulty_tables = {fault.key.partition(".")[0] for fault in faults}
         shift, series, expansion = None, None, 0.0
-        with _collected(faults, "shift"):
-            shift = build_shift(self.law_table, self.limits, self.temperature_unit)
+        if "shift" not in faulty_tables:
+            with _collected(faults, "shift"):
+                shift = build_shift(self.law_table, self.limits, self.temperature_unit)
         with _collected(faults, "elastic"):
             elastic = self._elastic()
-            with _collected(faults, "prony"):
-                series = self._shear_and_bulk(elastic)
+            if "prony" not in faulty_tables:
+                with _collected(faults, "prony"):
+                    series = self._shear_and_bulk(elastic)
         if self.document.expansion is not None:
             expansion = self.document.expansion.alpha / self.temperature_unit.scale
         if shift is None or series is None:
@@ -136,6 +142,11 @@ class Card:
         young = self._series("young", elastic.E, prony)
         if prony.lateral == "constant nu":
             return shear_and_bulk_of_young(young, nu=elastic.nu)
+        if not young.instantaneous < 9.0 * elastic.K:
+            E, K = (self.stress_unit.from_si(value) for value in (young.instantaneous, elastic.K))
+            found = f'"constant K" with an instantaneous E of {E:g} {self.stress_unit.name}'
+            hint = 'write lateral = "constant nu", or look at elastic.state'
+            raise ParameterError("lateral", f"E below 9 K = {9.0 * K:g} {self.stress_unit.name}", found, hint)
         return shear_and_bulk_of_young(young, K=elastic.K)
 
     def _series(self, name: str, modulus: float, prony: PronyTable) -> PronySeries:
@@ -145,27 +156,20 @@ class Card:
             return PronySeries.elastic(modulus)
         times = [self.time_unit.to_si(row[0]) for row in rows]
         shares = np.array([row[1] for row in rows])
-        total, instantaneous = float(shares.sum()), self.document.elastic.state == "instantaneous"
+        total, instantaneous = math.fsum(shares), self.document.elastic.state == "instantaneous"
         match prony.relative_to, instantaneous:
             case "instantaneous", True:
                 return PronySeries.from_fractions(modulus, shares, times)
             case "instantaneous", False:
-                if total >= 1.0:
-                    raise ParameterError(
-                        f"{name}: sum of fractions",
-                        "< 1, since the elastic constants are the long-term ones",
-                        f"{total:.6g}",
-                        'write state = "instantaneous" with instantaneous constants',
-                    )
                 return PronySeries.from_fractions(modulus / (1.0 - total), shares, times)
             case "long-term", True:
                 return PronySeries.from_long_term(modulus / (1.0 + total), shares, times)
             case "long-term", False:
                 return PronySeries.from_long_term(modulus, shares, times)
         moduli = self.stress_unit.to_si(shares)
-        if not instantaneous:
-            return PronySeries(equilibrium=modulus, moduli=moduli, times=times)  # type: ignore[arg-type]
-        return PronySeries.from_fractions(modulus, moduli / modulus, times)
+        if instantaneous:
+            return PronySeries.from_fractions(modulus, moduli / modulus, times)
+        return PronySeries(equilibrium=modulus, moduli=moduli, times=frozen(times))
 
 
 @contextmanager
@@ -177,44 +181,11 @@ def _collected(faults: list[Fault], table: str) -> Iterator[None]:
         key = f"{table}.{error.name}"
         faults.append(Fault(key=key, found=str(error.found), expected=error.expected, hint=error.hint))
     except ShiftRangeError as error:
-        faults.append(Fault(key=table, found=str(error), expected="a law that holds at its own T_ref"))
-
-
-def constant_faults(card: Card) -> list[tuple[str, Fault]]:
-    """What the physics forbids among the constants as they are written, with the id of the finding.
-
-    Parameters
-    ----------
-    card : Card
-
-    Returns
-    -------
-    faults : list of (id, Fault)
-        Empty for constants of the right sign and order.
-    """
-    faults: list[tuple[str, Fault]] = []
-    prony = card.document.prony
-    for name in SERIES:
-        for k, (time, share) in enumerate((getattr(prony, name) if prony else None) or [], start=1):
-            key = f"prony.{name}[{k}]"
-            if not time > 0.0:
-                faults.append(("time-not-positive", Fault(key=key, found=f"{time:g}", expected="a relaxation time > 0")))
-            if not share > 0.0:
-                what = "modulus" if prony is not None and prony.relative_to == "absolute" else "fraction"
-                faults.append(("fraction-not-positive", Fault(key=key, found=f"{share:g}", expected=f"a {what} > 0")))
-    faults += _sign_faults(card.law_table, "shift")
-    if isinstance(card.law_table, CrossoverTable):
-        for side, table in (("below", card.law_table.below), ("above", card.law_table.above)):
-            faults += _sign_faults(parse_shift(table, ("shift", side)), f"shift.{side}")
-    return faults
-
-
-def _sign_faults(table: LawTable, key: str) -> list[tuple[str, Fault]]:
-    return [
-        ("constant-sign", Fault(key=f"{key}.{name}", found=f"{value:g}", expected="a number > 0"))
-        for name in table.positive
-        if (value := getattr(table, name)) is not None and not value > 0.0
-    ]
+        faults.append(Fault(key=table, found=str(error), expected="a law that answers where it is used"))
+    except PluginError as error:
+        faults.append(
+            Fault(key=f"{table}.law", found=str(error), expected="a plug-in that makes a law of the constants")
+        )
 
 
 def read_card(file: str | Path) -> Card:
@@ -253,46 +224,10 @@ def read_card(file: str | Path) -> Card:
         except FaultyInputError as error:
             faults += error.faults
     if document is not None:
-        faults += _contradictions(document)
+        faults += contradictions(document)
     if faults or document is None or law_table is None or limits is None:
         raise FileError(name, faults)
     return Card(file=name, document=document, law_table=law_table, limits=limits)
-
-
-def _contradictions(document: CardDocument) -> list[Fault]:
-    """Tables that are well formed each, but cannot stand together."""
-    faults = []
-    given = document.elastic.given
-    if len(given) != 2:
-        found = ", ".join(given) or "nothing"
-        faults.append(Fault(key="elastic", found=found, expected="exactly two of E, G, K, nu"))
-    prony = document.prony
-    if prony is not None:
-        if prony.young is not None and (prony.shear is not None or prony.bulk is not None):
-            faults.append(Fault(key="prony", found="young beside shear or bulk", expected="either young, or shear and bulk"))
-        if prony.young is not None and prony.lateral is None:
-            expected = '"constant nu" or "constant K": what was assumed about the other modulus'
-            faults.append(Fault(key="prony.lateral", found="nothing", expected=expected, hint="add the key"))
-        if prony.young is None and prony.lateral is not None:
-            faults.append(Fault(key="prony.lateral", found=shown(prony.lateral), expected="no such key without young"))
-        if prony.young is None and prony.shear is None and prony.bulk is None:
-            faults.append(Fault(key="prony", found="no series", expected="shear, bulk or young"))
-    service = document.service
-    if service is not None:
-        faults += _range_faults("service.temperature", service.temperature, positive=False)
-        faults += _range_faults("service.time", service.time, positive=True)
-        zero = TEMPERATURE[document.units.temperature]
-        if zero.to_si(service.temperature[0]) <= 0.0:
-            faults.append(Fault(key="service.temperature", found=shown(service.temperature), expected="above absolute zero"))
-    return faults
-
-
-def _range_faults(key: str, values: list[float], *, positive: bool) -> list[Fault]:
-    if positive and not values[0] > 0.0:
-        return [Fault(key=key, found=shown(values), expected="[shortest, longest], both > 0")]
-    if not values[0] <= values[1]:
-        return [Fault(key=key, found=shown(values), expected="the smaller value first", hint="swap the two")]
-    return []
 
 
 def plain(document: CardDocument) -> dict[str, Any]:

@@ -107,7 +107,9 @@ def _new_units(card: Card, units: tuple[Unit, ...]) -> dict[str, str]:
     names = card.document.units.model_dump()
     changed: dict[str, str] = {}
     for unit in units:
-        quantity = next(q for q, known in (("stress", STRESS), ("time", TIME), ("temperature", TEMPERATURE)) if unit.name in known)
+        quantity = next(
+            q for q, known in (("stress", STRESS), ("time", TIME), ("temperature", TEMPERATURE)) if unit.name in known
+        )
         if quantity in changed:
             raise ConversionError(f"two {quantity} units: {changed[quantity]} and {unit.name}; give one")
         changed[quantity] = unit.name

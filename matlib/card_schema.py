@@ -9,7 +9,7 @@ from pydantic import Field
 from matlib.documents import Document
 from matlib.units import ENERGY, STRESS, TEMPERATURE, TIME
 
-__all__ = ["CardDocument", "LARGEST_NUMBER", "Number", "Pair", "UnitsTable"]
+__all__ = ["LARGEST_NUMBER", "CardDocument", "Number", "Pair", "UnitsTable"]
 
 LARGEST_NUMBER = 1e60
 """Larger than any number of the trade in any unit, small enough that no product of a few of them overflows."""
@@ -18,10 +18,16 @@ Number = Annotated[float, Field(ge=-LARGEST_NUMBER, le=LARGEST_NUMBER)]
 Pair = Annotated[list[Number], Field(min_length=2, max_length=2)]
 Terms = Annotated[list[Pair], Field(min_length=1, max_length=1000)]
 
-StressUnit = Annotated[Literal["Pa", "kPa", "MPa", "GPa", "psi", "ksi"], Field(description="a stress unit: " + ", ".join(STRESS))]
+StressUnit = Annotated[
+    Literal["Pa", "kPa", "MPa", "GPa", "psi", "ksi"], Field(description="a stress unit: " + ", ".join(STRESS))
+]
 TimeUnit = Annotated[Literal["s", "ms", "us", "min", "h", "d"], Field(description="a time unit: " + ", ".join(TIME))]
-TemperatureUnit = Annotated[Literal["K", "degC", "degF"], Field(description="a temperature unit: " + ", ".join(TEMPERATURE))]
-EnergyUnit = Annotated[Literal["J/mol", "kJ/mol", "kcal/mol", "eV"], Field(description="an energy unit: " + ", ".join(ENERGY))]
+TemperatureUnit = Annotated[
+    Literal["K", "degC", "degF"], Field(description="a temperature unit: " + ", ".join(TEMPERATURE))
+]
+EnergyUnit = Annotated[
+    Literal["J/mol", "kJ/mol", "kcal/mol", "eV"], Field(description="an energy unit: " + ", ".join(ENERGY))
+]
 
 
 class UnitsTable(Document):

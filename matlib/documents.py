@@ -16,11 +16,28 @@ from pydantic_core import ErrorDetails
 
 from matlib.errors import Fault, FaultyInputError, FileError
 
-__all__ = ["Document", "read_text", "read_toml", "shown", "validated", "write_atomically"]
+__all__ = ["ContradictionError", "Document", "read_text", "read_toml", "shown", "validated", "write_atomically"]
 
 LARGEST_FILE = 64 * 2**20  # bytes; a measured record of a million rows stays below
 
 DocumentType = TypeVar("DocumentType", bound="Document")
+
+
+class ContradictionError(ValueError):
+    """What a document type's own validator raises: keys that are well formed each, but cannot stand together.
+
+    Parameters
+    ----------
+    key : str
+        Within the table; empty for the table itself.
+    found, expected : str
+        As in `Fault`.
+    """
+
+    def __init__(self, key: str, found: str, expected: str) -> None:
+        super().__init__(expected)
+        self.key = key
+        self.found = found
 
 
 class Document(BaseModel):
@@ -31,8 +48,10 @@ class Document(BaseModel):
 
 def shown(value: object, width: int = 60) -> str:
     """A value as a message shows it: one line, cut where it is long."""
-    text = value.__class__.__name__ if isinstance(value, dict) else repr(value)
-    text = "a table" if isinstance(value, dict) else text
+    try:
+        text = "a table" if isinstance(value, dict) else repr(value)
+    except (ValueError, RecursionError):  # an integer of thousands of digits; nesting without end
+        text = "a number of thousands of digits" if isinstance(value, int) else f"an unreadable {type(value).__name__}"
     text = " ".join(text.split())
     return text if len(text) <= width else text[: width - 3] + "..."
 
@@ -95,6 +114,7 @@ _EXPECTED = {
     "int_type": "a whole number",
     "int_from_float": "a whole number",
     "string_type": "text in quotes",
+    "string_too_short": "text that is not empty",
     "bool_type": "true or false",
     "list_type": "a list",
     "dict_type": "a table",
@@ -106,7 +126,7 @@ _EXPECTED = {
 
 def _dotted(location: tuple[int | str, ...]) -> str:
     key = ""
-    for part in location:
+    for part in location[:-1] if location[-1:] == ("[key]",) else location:  # a wrong key is itself the last part
         key += f"[{part + 1}]" if isinstance(part, int) else f".{part}" if key else part
     return key or "file"
 
@@ -118,8 +138,9 @@ def _expected(error: ErrorDetails, model: type[BaseModel]) -> tuple[str, str]:
         return _description(error["loc"], model) or "a value for this key", "add the key"
     if kind == "extra_forbidden":
         known = sorted(_fields(error["loc"][:-1], model))
-        close = difflib.get_close_matches(str(error["loc"][-1]), known, n=1)
-        hint = f"write {close[0]!r}" if close else "remove the key"
+        by_case = {name.casefold(): name for name in known}
+        close = difflib.get_close_matches(str(error["loc"][-1]).casefold(), by_case, n=1)
+        hint = f"write {by_case[close[0]]!r}" if close else "remove the key"
         return "one of the keys " + ", ".join(known), hint
     if kind == "literal_error":
         return f"one of {context['expected']}", ""
@@ -190,8 +211,13 @@ def validated(model: type[DocumentType], data: object, prefix: tuple[int | str, 
         faults = []
         for detail in error.errors(include_url=False):
             expected, hint = _expected(detail, model)
+            location = prefix + detail["loc"]
             found = "nothing" if detail["type"] == "missing" else shown(detail["input"])
-            faults.append(Fault(key=_dotted(prefix + detail["loc"]), found=found, expected=expected, hint=hint))
+            contradiction = detail.get("ctx", {}).get("error")
+            if isinstance(contradiction, ContradictionError):
+                found = contradiction.found
+                location = (*location, contradiction.key) if contradiction.key else location
+            faults.append(Fault(key=_dotted(location), found=found, expected=expected, hint=hint))
         raise FaultyInputError(faults) from None
 
 

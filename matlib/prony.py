@@ -15,7 +15,8 @@ from matlib.terms import checked_terms, from_zero, merged_terms, ratios, require
 
 __all__ = ["CreepSeries", "PronySeries"]
 
-_FULL_SUM = 8.0 * float(np.finfo(np.float64).eps)
+FULL_SUM = 8.0 * float(np.finfo(np.float64).eps)
+"""How far a sum of fractions may lie from 1 and still be 1 to rounding."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -88,11 +89,11 @@ class PronySeries:
         modulus = require_positive("instantaneous", instantaneous, "Pa")
         shares, ordered = checked_terms("fractions", fractions, "", times)
         total = math.fsum(shares)
-        if total > 1.0 + _FULL_SUM:
+        if total > 1.0 + FULL_SUM:
             hint = "fractions are of the instantaneous modulus here; `from_long_term` takes those of the long-term one"
             raise ParameterError("sum of fractions", "at most 1", total, hint)
         rest = 1.0 - total
-        equilibrium = 0.0 if abs(rest) <= _FULL_SUM else modulus * rest
+        equilibrium = 0.0 if abs(rest) <= FULL_SUM else modulus * rest
         return cls(equilibrium=equilibrium, moduli=modulus * shares, times=ordered)
 
     @classmethod

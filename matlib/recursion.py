@@ -85,7 +85,8 @@ RECURSIONS: dict[str, Recursion] = {
             gain=_mean_decay,
             order=2,
             large_r="right limit: the gain falls as 1/r, as the integral itself does",
-            reference="R. L. Taylor, K. S. Pister, G. L. Goudreau, Int. J. Numer. Meth. Eng. 2 (1970) 45-59 (from memory)",
+            reference="R. L. Taylor, K. S. Pister, G. L. Goudreau, Int. J. Numer. Meth. Eng. 2 (1970) 45-59"
+            " (from memory)",
         ),
         Recursion(
             name="midpoint",

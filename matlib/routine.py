@@ -22,8 +22,8 @@ class Increment:
     time : float
         Time at the start [s].
     duration : float
-        Length of the increment [s], ``>= 0``; zero is a jump. Given on its own, because the difference of two late times
-        loses a short increment.
+        Length of the increment [s], ``>= 0``; zero is a jump. Given on its own, because the difference of two late
+        times loses a short increment.
     temperature : tuple of float
         Temperature at the start and at the end [K].
     strain : tuple of ndarray, each shape (6,)
@@ -70,9 +70,7 @@ class Routine(ABC):
     def update(self, increment: Increment, memory: FloatArray) -> Update:
         """Stress, tangent and new memory at the end of `increment`."""
 
-    def reduced_time(
-        self, duration: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike
-    ) -> FloatArray | None:
+    def reduced_time(self, duration: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray | None:
         """Reduced time of increments [s at T_ref], by a routine that tells its clock; None from one that does not."""
         return None
 

@@ -7,8 +7,9 @@ from typing import Annotated, Any, ClassVar, Literal
 
 from pydantic import Field, model_validator
 
+from matlib.arrays import frozen
 from matlib.card_schema import EnergyUnit, Number, Pair
-from matlib.documents import Document, shown, validated
+from matlib.documents import ContradictionError, Document, shown, validated
 from matlib.errors import Fault, FaultyInputError, ParameterError, UnknownNameError
 from matlib.shift import (
     VFT,
@@ -22,7 +23,7 @@ from matlib.shift import (
     Table,
 )
 from matlib.shift.registry import plugin_laws
-from matlib.units import ENERGY, GAS_CONSTANT, TEMPERATURE, Unit
+from matlib.units import ENERGY, GAS_CONSTANT, Unit
 
 __all__ = ["LAW_TABLES", "LawTable", "RangeTable", "build_shift", "parse_shift", "written_shift"]
 
@@ -80,9 +81,7 @@ class ArrheniusTable(LawTable):
     def build(self, temperature: Unit) -> ShiftLaw:
         """Arrhenius with the energy in J/mol."""
         energy = ENERGY[self.energy_unit].to_si(self.activation_energy)
-        return Arrhenius(
-            activation_energy=energy, T_ref=temperature.to_si(self.T_ref), gas_constant=self.gas_constant
-        )
+        return Arrhenius(activation_energy=energy, T_ref=temperature.to_si(self.T_ref), gas_constant=self.gas_constant)
 
 
 class VftTable(LawTable):
@@ -100,7 +99,8 @@ class VftTable(LawTable):
     @model_validator(mode="after")
     def _one_strength(self) -> VftTable:
         if (self.B is None) == (self.activation_energy is None):
-            raise ValueError("either B or activation_energy, not both and not neither")
+            found = "B and activation_energy" if self.B is not None else "neither B nor activation_energy"
+            raise ContradictionError("", found, "either B or activation_energy")
         return self
 
     def build(self, temperature: Unit) -> ShiftLaw:
@@ -125,7 +125,7 @@ class PolynomialTable(LawTable):
     def build(self, temperature: Unit) -> ShiftLaw:
         """Polynomial with coefficients per kelvin."""
         scaled = [c / temperature.scale**k for k, c in enumerate(self.coefficients, start=1)]
-        return Polynomial(coefficients=scaled, T_ref=temperature.to_si(self.T_ref))
+        return Polynomial(coefficients=frozen(scaled), T_ref=temperature.to_si(self.T_ref))
 
 
 class TableTable(LawTable):
@@ -141,7 +141,7 @@ class TableTable(LawTable):
         """Table with temperatures in kelvin."""
         T, log10_a = zip(*self.points, strict=True)
         kelvin = [temperature.to_si(value) for value in T]
-        return Table(T=kelvin, log10_a=list(log10_a), T_ref=temperature.to_si(self.T_ref))
+        return Table(T=frozen(kelvin), log10_a=frozen(log10_a), T_ref=temperature.to_si(self.T_ref))
 
 
 class CrossoverTable(LawTable):
@@ -157,7 +157,7 @@ class CrossoverTable(LawTable):
         """Both laws, joined."""
         below = parse_shift(self.below, prefix=("shift", "below")).build(temperature)
         above = parse_shift(self.above, prefix=("shift", "above")).build(temperature)
-        T_ref = None if self.T_ref is None else temperature.to_si(self.T_ref)
+        T_ref = above.T_ref if self.T_ref is None else temperature.to_si(self.T_ref)
         return Crossover(below=below, above=above, at=temperature.to_si(self.at), T_ref=T_ref)
 
 
@@ -181,9 +181,10 @@ class RangeTable(Document):
     @model_validator(mode="after")
     def _ordered(self) -> RangeTable:
         if self.measured is not None and not self.measured[0] < self.measured[1]:
-            raise ValueError("measured = [lower temperature, higher temperature]")
+            raise ContradictionError("measured", shown(self.measured), "the lower temperature, then the higher")
         if self.measured is None and self.outside != "extrapolate":
-            raise ValueError(f'measured = [lower, higher], since outside = "{self.outside}" is relative to it')
+            expected = f'[lower, higher] temperature, since outside = "{self.outside}" is relative to it'
+            raise ContradictionError("measured", "nothing", expected)
         return self
 
 
@@ -224,9 +225,7 @@ def parse_shift(table: dict[str, Any], prefix: tuple[str, ...] = ("shift",)) -> 
     plugins = plugin_laws()
     if name not in plugins:
         error = UnknownNameError("shift law", name, [*LAW_TABLES, *plugins])
-        raise FaultyInputError(
-            [Fault(key=f"{key}.law", found=repr(name), expected=f"one of {', '.join(error.known)}")]
-        )
+        raise FaultyInputError([Fault(key=f"{key}.law", found=repr(name), expected=f"one of {', '.join(error.known)}")])
     return PluginTable(law=name, constants={k: v for k, v in table.items() if k != "law"})
 
 
@@ -313,4 +312,3 @@ def written_shift(law: ShiftLaw, temperature: Unit, *, like: LawTable | None = N
             at, T_ref = unit.from_si(law.at), unit.from_si(law.T_ref)
             return {"law": "crossover", "at": at, "T_ref": T_ref, "below": below, "above": above}
     raise ParameterError("law", f"one that a card can be written with: {', '.join(LAW_TABLES)}", law.name)
-

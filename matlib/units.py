@@ -38,7 +38,7 @@ class Unit:
 
     Examples
     --------
-    >>> TEMPERATURE["degF"].to_si(32.0)
+    >>> round(TEMPERATURE["degF"].to_si(32.0), 12)
     273.15
     >>> TEMPERATURE["degF"].difference_to_si(9.0)
     5.0
