@@ -84,7 +84,9 @@ def card_window(card: Card, material: Material) -> Window:
         material.shift.ln_shift([low, T_ref + WIDTH / 2])
     except ShiftRangeError:
         return Window(temperature=(T_ref, T_ref), time=time, source="T_ref and relaxation times of the card")
-    return Window(temperature=(low, T_ref + WIDTH / 2), time=time, source="T_ref +- 20 K and relaxation times of the card")
+    return Window(
+        temperature=(low, T_ref + WIDTH / 2), time=time, source="T_ref +- 20 K and relaxation times of the card"
+    )
 
 
 def _segment(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 import sys
 from pathlib import Path
 from typing import Annotated
@@ -24,7 +25,9 @@ app = typer.Typer(
 CardFile = Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml.")]
 CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card files, *.card.toml.")]
 PathFile = Annotated[str, typer.Argument(metavar="PATH", help="A path file, *.path.toml.")]
-Json = Annotated[str | None, typer.Option("--json", metavar="FILE", help="Write the result as JSON; - for standard output.")]
+Json = Annotated[
+    str | None, typer.Option("--json", metavar="FILE", help="Write the result as JSON; - for standard output.")
+]
 Plot = Annotated[str | None, typer.Option("--plot", metavar="FILE", help="Draw the result: .png, .svg or .pdf.")]
 
 
@@ -80,9 +83,12 @@ def convert(
         tuple[str, str] | None, typer.Option("--range", metavar="T1 T2", help="What an inexact conversion is made for.")
     ] = None,
     points: Annotated[int | None, typer.Option("--points", metavar="N", help="Temperatures of a table.")] = None,
-    base: Annotated[str | None, typer.Option("--base", metavar="BASE", help="10 or e: logarithm of WLF constants.")] = None,
+    base: Annotated[
+        str | None, typer.Option("--base", metavar="BASE", help="10 or e: logarithm of WLF constants.")
+    ] = None,
     units: Annotated[
-        list[str] | None, typer.Option("--units", metavar="UNIT", help="A unit of the new card, as in K; may be repeated.")
+        list[str] | None,
+        typer.Option("--units", metavar="UNIT", help="A unit of the new card, as in K; may be repeated."),
     ] = None,
     json: Json = None,
 ) -> None:
@@ -94,7 +100,15 @@ def convert(
 
     raise typer.Exit(
         run(
-            card, to, output, reference=reference, span=span, points=points, base=base, units=units or [], json_file=json
+            card,
+            to,
+            output,
+            reference=reference,
+            span=span,
+            points=points,
+            base=base,
+            units=units or [],
+            json_file=json,
         )
     )
 
@@ -120,14 +134,12 @@ def drive(
 ) -> None:
     """Stress, strain and temperature along a path.
 
-    Example: cardproof drive cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml --plot drive.png
+    Example: cardproof drive cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml
     """
     from drivers.commands.drive import run
 
     raise typer.Exit(
-        run(
-            card, path, output=output, shift_rule=shift_rule, recursion=recursion, keep=keep, plot=plot, json_file=json
-        )
+        run(card, path, output=output, shift_rule=shift_rule, recursion=recursion, keep=keep, plot=plot, json_file=json)
     )
 
 
@@ -164,8 +176,11 @@ def main(arguments: list[str] | None = None) -> int:
     Returns
     -------
     status : int
-        0 it holds, 1 it was checked and falls short, 2 the input or the usage is wrong; 130 when interrupted.
+        0 it holds, 1 it was checked and falls short, 2 the input or the usage is wrong; 130 when interrupted, 141 when
+        the reader of standard output has gone.
     """
+    if isinstance(sys.stdout, io.TextIOWrapper):
+        sys.stdout.reconfigure(errors="backslashreplace")  # a name that the terminal cannot spell is no reason to fail
     command = typer.main.get_command(app)
     try:
         status = command.main(arguments, prog_name="cardproof", standalone_mode=False)
@@ -176,8 +191,10 @@ def main(arguments: list[str] | None = None) -> int:
         return _refused(error.lines())
     except (KeyboardInterrupt, typer.Abort):
         return _refused(["cardproof: interrupted"], 130)
-    except BrokenPipeError:
+    except SystemExit:  # never for the usage, which is an exception here: what is below us leaves so on a broken pipe
         return 141
+    except OSError as error:
+        return _refused([f"cardproof: standard output: {error.strerror or error}"])
     except MemoryError:
         return _refused(["cardproof: not enough memory; keep fewer rows, or use fewer increments"])
 

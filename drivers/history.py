@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import csv
+import dataclasses
 import io
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import ArrayLike
 
-from matlib.arrays import FloatArray
+from matlib.arrays import BoolArray, FloatArray
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, strain_from_mandel, stress_from_mandel
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
@@ -33,6 +35,8 @@ class History:
         Guaranteed half-width on any stress component of the row [Pa]; None where the rows are not a reference solution.
     peak_stress : float
         Largest magnitude of any stress component over all increments, kept or not [Pa].
+    ends : ndarray of bool, shape (n,), or None
+        Which rows end a segment, the start among them; None where rows are told apart by their labels alone.
     """
 
     segment: tuple[str, ...]
@@ -43,9 +47,24 @@ class History:
     stress: FloatArray
     peak_stress: float
     bound: FloatArray | None = None
+    ends: BoolArray | None = None
 
     def __len__(self) -> int:
         return len(self.segment)
+
+    def taken(self, rows: ArrayLike) -> History:
+        """The history at some rows only; `peak_stress` stays that of the whole run."""
+        index = np.asarray(rows, dtype=np.int64)
+        return dataclasses.replace(
+            self,
+            segment=tuple(self.segment[k] for k in index),
+            time=self.time[index],
+            temperature=self.temperature[index],
+            reduced_time=None if self.reduced_time is None else self.reduced_time[index],
+            strain=self.strain[index],
+            stress=self.stress[index],
+            bound=None if self.bound is None else self.bound[index],
+        )
 
     @property
     def strain_components(self) -> FloatArray:
@@ -56,6 +75,25 @@ class History:
     def stress_components(self) -> FloatArray:
         """Stresses in the order s11 s22 s33 s23 s13 s12 [Pa], shape (n, 6)."""
         return stress_from_mandel(self.stress)
+
+    def at_segment_ends(self) -> History:
+        """Only the rows that end a segment, and the start."""
+        labels = self.segment
+        if self.ends is not None:
+            rows = np.flatnonzero(self.ends)
+        else:
+            rows = np.array([k for k in range(len(labels)) if labels[k : k + 1] != labels[k + 1 : k + 2]])
+        return replace(
+            self,
+            segment=tuple(labels[k] for k in rows),
+            time=self.time[rows],
+            temperature=self.temperature[rows],
+            reduced_time=None if self.reduced_time is None else self.reduced_time[rows],
+            strain=self.strain[rows],
+            stress=self.stress[rows],
+            bound=None if self.bound is None else self.bound[rows],
+            ends=np.ones(rows.size, dtype=np.bool_),
+        )
 
 
 def csv_text(

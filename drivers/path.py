@@ -207,12 +207,20 @@ class Path:
     @property
     def increment_count(self) -> int:
         """Increments of the whole run, cycles counted."""
-        return sum(segment.increment_count for _, _, segment in self.unrolled())
+        return sum(times * segment.increment_count for times, segment in self._counted())
 
     @property
     def duration(self) -> float:
         """Length of the whole run [s], cycles counted."""
-        return math.fsum(segment.duration for _, _, segment in self.unrolled())
+        return math.fsum(times * segment.duration for times, segment in self._counted())
+
+    def _counted(self) -> Iterator[tuple[int, Segment]]:
+        """Each distinct segment, and how often it runs."""
+        for part in self.parts:
+            if isinstance(part, Segment):
+                yield 1, part
+            else:
+                yield from ((part.repeat, segment) for segment in part.segments)
 
     @property
     def temperature_range(self) -> tuple[float, float]:
@@ -261,8 +269,8 @@ def fractions(count: int, spacing: str, start: int, stop: int) -> tuple[FloatArr
 
     Notes
     -----
-    "log" maps even fractions `x` to ``(S**x - 1)/(S - 1)`` with ``S = LOG_SPAN``: one smooth map, whatever the count, so
-    that doubling the count halves every increment and orders of convergence can be observed.
+    "log" maps even fractions `x` to ``(S**x - 1)/(S - 1)`` with ``S = LOG_SPAN``: one smooth map, whatever the count,
+    so that doubling the count halves every increment and orders of convergence can be observed.
 
     Examples
     --------

@@ -13,7 +13,7 @@ from drivers.record_file import read_record
 from matlib.arrays import BoolArray, FloatArray
 from matlib.card_schema import Number, StressUnit, TemperatureUnit, TimeUnit
 from matlib.documents import Document, read_toml, shown, validated
-from matlib.errors import Fault, FaultyInputError, FileError
+from matlib.errors import Fault, FaultyInputError
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, mandel_from_strain, mandel_from_stress
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
@@ -141,7 +141,9 @@ class _Control:
         return strains, {} if step.stress is None else dict.fromkeys(driven, step.stress)
 
 
-def _segment(data: dict[str, Any], prefix: tuple[str | int, ...], number: int, control: _Control, units: UnitsTable) -> Segment:
+def _segment(
+    data: dict[str, Any], prefix: tuple[str | int, ...], number: int, control: _Control, units: UnitsTable
+) -> Segment:
     step = validated(NamedStep if control.mode.driven else ComponentStep, data, prefix)
     key = "segment" + "".join(f"[{p + 1}]" if isinstance(p, int) else f".{p}" for p in prefix[1:])
     stress = None if units.stress is None else STRESS[units.stress]
@@ -259,7 +261,8 @@ def _recorded(document: PathDocument, file: FilePath) -> Path:
         faults.append(Fault(key="start", found="a table beside a record", expected="no such table", hint=hint))
     mode = MODES[document.mode]
     if not mode.driven:
-        faults.append(Fault(key="mode", found=shown(mode.name), expected="a named mode, since a record has one column of it"))
+        expected = "a named mode, since a record has one column of it"
+        faults.append(Fault(key="mode", found=shown(mode.name), expected=expected))
     if faults:
         raise FaultyInputError(faults)
     record = read_record(
@@ -285,5 +288,3 @@ def _recorded(document: PathDocument, file: FilePath) -> Path:
         increments=1,
     )
     return Path(name=document.name, mode=mode, start_temperature=float(record.temperature[0]), parts=(segment,))
-
-

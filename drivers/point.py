@@ -14,11 +14,11 @@ from matlib.errors import CardproofError, ParameterError
 from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Routine
 from matlib.tensors import stress_from_mandel
 
-__all__ = ["ControlError", "drive", "march", "take_stepwise"]
+__all__ = ["ControlError", "ResponseError", "drive", "march", "take_stepwise"]
 
 NEWTON_LIMIT = 25
 NEWTON_TOLERANCE = 1e-12
-"""Largest residual of a controlled stress, as a fraction of the stress that the tangent and the strain step stand for."""
+"""Largest residual of a controlled stress, as a fraction of the stress that the tangent and the strains stand for."""
 
 
 class ControlError(CardproofError, ArithmeticError):
@@ -33,6 +33,21 @@ class ControlError(CardproofError, ArithmeticError):
         return (
             f"stress control did not converge in the increment that starts at {self.time:g} s: "
             f"{self.residual:g} Pa are left after {NEWTON_LIMIT} iterations; look at the routine's tangent"
+        )
+
+
+class ResponseError(CardproofError, ArithmeticError):
+    """A routine answered an increment with a stress or a strain that is not finite."""
+
+    def __init__(self, segment: str, time: float) -> None:
+        super().__init__(segment, time)
+        self.segment = segment
+        self.time = time
+
+    def __str__(self) -> str:
+        return (
+            f"no finite response in segment {self.segment!r}, in the increment that starts at {self.time:g} s: "
+            "the stiffness there is zero, or stress or strain grow without bound"
         )
 
 
@@ -74,6 +89,7 @@ def take_stepwise(routine: Routine, block: Block, strain: FloatArray, memory: Fl
     """
     free = block.stress_controlled
     strains, stresses = np.empty_like(block.targets), np.empty_like(block.targets)
+    extent = float(np.abs(strain).max())  # largest strain so far: what is remembered of it may cancel to rounding only
     for k, target in enumerate(block.targets):
         strain_end = np.where(free, strain, target)
         for _ in range(NEWTON_LIMIT):
@@ -87,11 +103,17 @@ def take_stepwise(routine: Routine, block: Block, strain: FloatArray, memory: Fl
             if not free.any():
                 break
             residual = target[free] - update.stress[free]
-            scale = np.abs(update.tangent).max() * np.abs(strain_end - strain).max() + np.abs(update.stress).max()
+            if not np.isfinite(residual).all():
+                break
+            extent = max(extent, float(np.abs(strain_end).max()))
+            scale = np.abs(update.tangent).max() * extent + np.abs(update.stress).max()
             if np.abs(residual).max() <= NEWTON_TOLERANCE * scale:
                 break
             strain_end = strain_end.copy()
-            strain_end[free] += np.linalg.solve(update.tangent[np.ix_(free, free)], residual)
+            try:
+                strain_end[free] += np.linalg.solve(update.tangent[np.ix_(free, free)], residual)
+            except np.linalg.LinAlgError:
+                raise ControlError(float(block.time[k]), float(np.abs(residual).max())) from None
         else:
             raise ControlError(float(block.time[k]), float(np.abs(residual).max()))
         strain, memory = strain_end, update.memory
@@ -113,6 +135,11 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
     ------
     rows
         The increment ends of one block; memory use does not grow with the path.
+
+    Raises
+    ------
+    ResponseError
+        If a stress or a strain is not finite.
     """
     strain, stress, memory = np.zeros(6), np.zeros(6), np.zeros(routine.memory_size)
     time, temperature, xi = 0.0, path.start_temperature, 0.0
@@ -124,6 +151,9 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
                 response = routine.run(block, strain, memory)
             else:
                 response = take_stepwise(routine, block, strain, memory)
+            wrong = ~(np.isfinite(response.stress).all(axis=1) & np.isfinite(response.strain).all(axis=1))
+            if wrong.any():
+                raise ResponseError(label, float(block.time[int(wrong.argmax())]))
             T = block.temperature
             dxi = routine.reduced_time(block.duration, T[:-1], T[1:])
             clock = None if dxi is None else xi + np.cumsum(dxi)
@@ -146,10 +176,8 @@ def _kept(rows: _Rows, before: int, keep: str | int) -> BoolArray:
     count = rows.time.size
     if keep == "all":
         return np.ones(count, dtype=np.bool_)
-    if isinstance(keep, int):
-        mask = (before + np.arange(1, count + 1)) % keep == 0
-    else:
-        mask = np.zeros(count, dtype=np.bool_)
+    number = before + np.arange(1, count + 1)
+    mask = number % keep == 0 if isinstance(keep, int) else np.zeros(count, dtype=np.bool_)
     mask[-1] |= rows.ends_segment
     return mask
 
@@ -187,6 +215,8 @@ def drive(
         If the path leads the shift law where it has no answer.
     ControlError
         If a routine's tangent does not lead to the stress that a component must follow.
+    ResponseError
+        If a stress or a strain is not finite.
     """
     if not (keep in ("all", "ends") or (isinstance(keep, int) and keep >= 1)):
         raise ParameterError("keep", '"all", "ends" or an integer >= 1', keep)
@@ -194,9 +224,13 @@ def drive(
     times, temperatures = [np.zeros(1)], [np.array([path.start_temperature])]
     clocks: list[FloatArray] | None = [np.zeros(1)]
     strains, stresses = [np.zeros((1, 6))], [np.zeros((1, 6))]
+    ends = [np.ones(1, dtype=np.bool_)]
     for rows in march(routine, path, stepwise=stepwise):
         mask = _kept(rows, before, keep)
         before += mask.size
+        last = np.zeros(mask.size, dtype=np.bool_)
+        last[-1] = rows.ends_segment
+        ends.append(last[mask])
         peak = max(peak, float(np.abs(stress_from_mandel(rows.response.stress)).max()))
         labels += [rows.label] * int(np.count_nonzero(mask))
         times.append(rows.time[mask])
@@ -217,4 +251,5 @@ def drive(
         strain=np.concatenate(strains),
         stress=np.concatenate(stresses),
         peak_stress=peak,
+        ends=np.concatenate(ends),
     )

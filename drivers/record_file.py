@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import csv
+import io
 import math
 from dataclasses import dataclass
 from pathlib import Path as FilePath
@@ -17,6 +18,8 @@ from matlib.units import STRESS, TEMPERATURE, Unit, find_unit
 __all__ = ["Record", "read_record"]
 
 FAULTS_SHOWN = 20
+LARGEST = {"time": 1e30, "temperature": 1e60, "strain": 1e3, "stress": 1e60}
+"""As in a path file, in the units of the record."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -68,24 +71,25 @@ def read_record(file: str | FilePath, *, time: Unit, temperature: Unit, stress: 
     """
     name = str(file)
     try:
-        rows = [row for row in csv.reader(read_text(file).splitlines(), strict=True) if any(cell.strip() for cell in row)]
+        reader = csv.reader(io.StringIO(read_text(file), newline=""), strict=True)
+        rows = [(reader.line_num, row) for row in reader if any(cell.strip() for cell in row)]
     except csv.Error as error:
         raise FileError(name, [Fault(key="file", found=str(error), expected="a CSV file")]) from None
-    columns = _columns(rows[0]) if rows else {}
+    columns = _columns(rows[0][1]) if rows else {}
     driven = [key for key in ("strain", "stress") if key in columns]
     faults = [
-        Fault(key="header", found=shown(", ".join(columns) or "nothing"), expected=f"a column {key!r}")
+        Fault(key="header", found=", ".join(columns)[:60] or "nothing", expected=f"a column {key!r}")
         for key in ("time", "temperature")
         if key not in columns
     ]
     if len(driven) != 1:
-        faults.append(
-            Fault(key="header", found=" and ".join(driven) or "neither", expected="one of the columns 'strain' and 'stress'")
-        )
+        expected = "one of the columns 'strain' and 'stress'"
+        faults.append(Fault(key="header", found=" and ".join(driven) or "neither", expected=expected))
     if faults:
         raise FileError(name, faults)
     if len(rows) < 3:
-        raise FileError(name, [Fault(key="rows", found=str(len(rows) - 1), expected="at least 2 rows under the header")])
+        expected = "at least 2 rows under the header"
+        raise FileError(name, [Fault(key="rows", found=str(len(rows) - 1), expected=expected)])
     is_stress = driven == ["stress"]
     defaults = {"time": time, "temperature": temperature, "stress": stress}
     arrays = []
@@ -96,7 +100,7 @@ def read_record(file: str | FilePath, *, time: Unit, temperature: Unit, stress: 
         arrays.append(values if unit is None else unit.to_si(values))
         faults += wrong
     if not faults:
-        faults += _order_faults(*arrays[:2])
+        faults += _order_faults([line for line, _ in rows[1:]], *arrays[:2])
     if faults:
         hidden = len(faults) - FAULTS_SHOWN
         more = [Fault(key="rows", found=f"{hidden} more faults", expected="none")] if hidden > 0 else []
@@ -121,25 +125,28 @@ def _unit(key: str, name: str | None, default: Unit | None, faults: list[Fault])
     return default
 
 
-def _numbers(key: str, index: int, rows: list[list[str]]) -> tuple[FloatArray, list[Fault]]:
-    values, faults = np.zeros(len(rows)), []
-    for k, row in enumerate(rows):
+def _numbers(key: str, index: int, rows: list[tuple[int, list[str]]]) -> tuple[FloatArray, list[Fault]]:
+    values, faults, largest = np.zeros(len(rows)), [], LARGEST[key]
+    for k, (line, row) in enumerate(rows):
         cell = row[index].strip() if index < len(row) else ""
         try:
-            values[k] = float(cell)
+            value = math.nan if "_" in cell else float(cell)
         except ValueError:
-            values[k] = math.nan
-        if not abs(values[k]) < 1e60:
-            values[k] = 0.0
-            faults.append(Fault(key=f"row {k + 2}, {key}", found=shown(cell), expected="a finite number"))
+            value = math.nan
+        if abs(value) <= largest:
+            values[k] = value
+        else:
+            expected = f"a number from {-largest:g} to {largest:g}" if math.isfinite(value) else "a finite number"
+            faults.append(Fault(key=f"line {line}, {key}", found=shown(cell), expected=expected))
     return values, faults
 
 
-def _order_faults(time: FloatArray, temperature: FloatArray) -> list[Fault]:
+def _order_faults(lines: list[int], time: FloatArray, temperature: FloatArray) -> list[Fault]:
     faults = []
     for k in np.flatnonzero(np.diff(time) < 0.0):
-        faults.append(Fault(key=f"row {k + 3}, time", found=f"{time[k + 1]:g} s", expected=f">= {time[k]:g} s, the row before"))
+        expected = f">= {time[k]:g} s, the row before"
+        faults.append(Fault(key=f"line {lines[k + 1]}, time", found=f"{time[k + 1]:g} s", expected=expected))
     for k in np.flatnonzero(temperature <= 0.0):
         found = f"{TEMPERATURE['K'].from_si(float(temperature[k])):g} K"
-        faults.append(Fault(key=f"row {k + 2}, temperature", found=found, expected="above absolute zero"))
+        faults.append(Fault(key=f"line {lines[k]}, temperature", found=found, expected="above absolute zero"))
     return faults

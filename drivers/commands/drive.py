@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from drivers.commands.inputs import gather
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
-from drivers.history import History, csv_text
+from drivers.history import csv_text
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.point import drive
@@ -21,6 +21,7 @@ from matlib.viscoelastic import LinearViscoelastic
 __all__ = ["run"]
 
 LARGEST_HISTORY = 5_000_000  # rows
+LONGEST_NUMBER = 18  # digits
 
 
 def run(
@@ -56,33 +57,13 @@ def run(
         save_figure(drive_figure(history, card, path), plot)
     data = drive_data(history, card, path, file=output, shift_rule=shift_rule, recursion=recursion)
     title = f"{card.name} on {path.name} ({path.mode.name}; {shift_rule}, {recursion})"
-    return deliver(data, history_tables(_at_ends(history), title, card.stress_unit, card.temperature_unit), json_file)
+    tables = history_tables(history.at_segment_ends(), title, card.stress_unit, card.temperature_unit)
+    return deliver(data, tables, json_file)
 
 
 def _parse_keep(text: str) -> str | int:
     if text in ("all", "ends"):
         return text
-    if not text.isascii() or not text.isdigit() or int(text) < 1:
+    if not (text.isascii() and text.isdigit() and len(text) <= LONGEST_NUMBER and int(text) >= 1):
         raise ParameterError("--keep", "all, ends or a whole number >= 1", repr(text))
     return int(text)
-
-
-def _at_ends(history: History) -> History:
-    """The rows that end a segment, and the start."""
-    import dataclasses
-
-    import numpy as np
-
-    labels = history.segment
-    last = [k for k in range(len(labels)) if k + 1 == len(labels) or labels[k + 1] != labels[k]]
-    rows = np.array(last)
-    return dataclasses.replace(
-        history,
-        segment=tuple(labels[k] for k in last),
-        time=history.time[rows],
-        temperature=history.temperature[rows],
-        reduced_time=None if history.reduced_time is None else history.reduced_time[rows],
-        strain=history.strain[rows],
-        stress=history.stress[rows],
-        bound=None if history.bound is None else history.bound[rows],
-    )

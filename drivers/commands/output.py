@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import sys
 from collections.abc import Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -40,13 +39,13 @@ def deliver(data: dict[str, Any], tables: Iterable[RenderableType], json_file: s
     if json_file is not None:
         text = json_text(data)
         if json_file == "-":
-            sys.stdout.write(text)
+            print(text, end="", flush=True)
         else:
             write_atomically(json_file, text)
     if json_file != "-":
         from rich.console import Console
 
-        console = Console(highlight=False)
+        console = Console(highlight=False, markup=False, emoji=False)
         for table in tables:
             console.print(table)
     return 0 if data["verdict"] == "holds" else 1
@@ -100,7 +99,10 @@ def require_folder(file: str | None) -> None:
 def save_figure(figure: Figure, file: str) -> None:
     """Write a figure whole, in the format of its ending."""
     import io
+    import warnings
 
     buffer = io.BytesIO()
-    figure.savefig(buffer, format=Path(file).suffix.lower().lstrip("."), dpi=150)
+    with warnings.catch_warnings():  # a letter that the font lacks is drawn as a box
+        warnings.filterwarnings("ignore", message="Glyph .* missing", category=UserWarning)
+        figure.savefig(buffer, format=Path(file).suffix.lower().lstrip("."), dpi=150)
     write_atomically(file, buffer.getvalue())

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from matplotlib.figure import Figure
@@ -23,9 +23,9 @@ if TYPE_CHECKING:
 __all__ = ["comparison_figure", "drive_figure"]
 
 # Told apart in black and white by their dashes, and by people who see few colours by their lightness.
-FIRST = {"color": "#1b3a5c", "linestyle": "-", "linewidth": 1.6}
-SECOND = {"color": "#d97706", "linestyle": (0, (5, 2)), "linewidth": 1.6}
-THIRD = {"color": "#6b7280", "linestyle": (0, (1, 1.5)), "linewidth": 1.4}
+FIRST: dict[str, Any] = {"color": "#1b3a5c", "linestyle": "-", "linewidth": 1.6}
+SECOND: dict[str, Any] = {"color": "#d97706", "linestyle": (0, (5, 2)), "linewidth": 1.6}
+THIRD: dict[str, Any] = {"color": "#6b7280", "linestyle": (0, (1, 1.5)), "linewidth": 1.4}
 
 
 def _figure(width: float, height: float) -> Figure:
@@ -96,7 +96,7 @@ def drive_figure(history: History, card: Card, path: Path) -> Figure:
     right.plot(strains[:, across], values, **FIRST)
     _finish(right, f"{STRAIN_COMPONENTS[across]} [-]", label, "stress against strain")
     right.ticklabel_format(axis="x", style="sci", scilimits=(-2, 3))
-    figure.suptitle(f"{card.name} on {path.name}", fontsize=11, x=0.01, ha="left")
+    figure.suptitle(f"{card.name} on {path.name}", fontsize=11, x=0.01, ha="left", parse_math=False)
     return figure
 
 
@@ -121,10 +121,10 @@ def comparison_figure(comparison: Comparison, a: Card, b: Card) -> Figure:
         figure.add_subplot(grid[:, 1]),
     )
     _draw_responses(upper, lower, worst.first, worst.second, worst.quantity, worst.component, a)
-    upper.set_title(f"worst path: {worst.path.name}", loc="left", fontsize=10, fontweight="bold")
+    upper.set_title(f"worst path: {worst.path.name}", loc="left", fontsize=10, fontweight="bold", parse_math=False)
     _draw_shift_laws(right, a, b)
     names = f"A (solid): {a.name}\nB (dashed): {b.name}"
-    figure.suptitle(f"{comparison.same}\n{names}", fontsize=10, x=0.01, ha="left")
+    figure.suptitle(f"{comparison.same}\n{names}", fontsize=10, x=0.01, ha="left", parse_math=False)
     return figure
 
 

@@ -31,10 +31,11 @@ class _Bar:
             if time.monotonic() - self.started < PATIENCE:
                 return
             from rich.console import Console
+            from rich.markup import escape
             from rich.progress import Progress
 
             self.bar = Progress(console=Console(stderr=True), transient=True)
-            self.task = self.bar.add_task(self.what, total=self.total)
+            self.task = self.bar.add_task(escape(self.what), total=self.total)
             self.bar.start()
         assert self.task is not None
         self.bar.update(self.task, completed=self.done)

@@ -30,9 +30,7 @@ __all__ = [
     "verdict_line",
 ]
 
-CAUTION = (
-    "This checks a card at one material point, not a part; qualification, tests and licensed practice decide."
-)
+CAUTION = "This checks a card at one material point, not a part; qualification, tests and licensed practice decide."
 
 ROWS_SHOWN = 24
 STYLES = {"error": "bold red", "warning": "yellow", "note": "cyan"}
@@ -105,7 +103,9 @@ def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[R
         line = Text.assemble(("inexact", "bold yellow"), text)
     table = plain_table("", [("constant", "left"), ("value", "right")])
     for key, value in converted.shift.items():
-        shown = f"{len(value)} points" if key == "points" else f"{value:.10g}" if isinstance(value, float) else str(value)
+        shown = f"{value:.10g}" if isinstance(value, float) else str(value)
+        if key == "points":
+            shown = f"{len(value)} points"
         table.add_row(key, shown)
     if conversion.time_factor != 1.0:
         table.add_row("times multiplied by", f"{conversion.time_factor:.10g}")
@@ -135,7 +135,8 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
         if row < 0:
             table.add_row(*["..."] * len(columns))
             continue
-        cells = [history.segment[row], f"{history.time[row]:.6g}", f"{temperature.from_si(history.temperature[row]):.4g}"]
+        T = temperature.from_si(history.temperature[row])
+        cells = [history.segment[row], f"{history.time[row]:.6g}", f"{T:.4g}"]
         cells += [f"{strains[row, c]:.5g}" for c in shown] + [f"{stresses[row, c]:.6g}" for c in loaded]
         if history.bound is not None:
             cells.append(f"{stress.from_si(float(history.bound[row])):.2g}")
@@ -155,8 +156,9 @@ def comparison_tables(comparison: Comparison, a: Card, b: Card) -> list[Renderab
 
 def _same_text(comparison: Comparison, worst: PathComparison) -> str:
     if comparison.same == "identical":
-        largest = max(p.rounding for p in comparison.paths)
-        return f"identical to rounding (largest difference {percent(worst.relative or 0.0)}, rounding bound {percent(largest)})"
+        bound = percent(max(p.rounding for p in comparison.paths))
+        difference = percent(worst.relative or 0.0)
+        return f"identical to rounding (largest difference {difference}, rounding bound {bound})"
     if worst.relative is None:
         return f"different: no answer on path {worst.path.name!r}"
     text = f"{percent(worst.relative)} of the peak {worst.quantity} apart on path {worst.path.name!r}"

@@ -195,9 +195,7 @@ def _compare_path(a: Material, b: Material, path: Path, tolerance: float) -> Pat
         largest_difference=difference,
         relative=relative,
         rounding=rounding,
-        at=Where(
-            segment=first.segment[row], time=float(first.time[row]), temperature=float(first.temperature[row])
-        ),
+        at=Where(segment=first.segment[row], time=float(first.time[row]), temperature=float(first.temperature[row])),
         holds=relative <= max(tolerance, rounding),
         first=first,
         second=second,
@@ -221,8 +219,8 @@ def compare(
     paths : sequence of Path
         At least one.
     tolerance : float
-        Largest difference that passes, as a fraction of a path's peak stress (or of its peak strain, where strain is the
-        response), ``>= 0``.
+        Largest difference that passes, as a fraction of a path's peak stress (or of its peak strain, where strain is
+        the response), ``>= 0``.
     temperatures : tuple of float
         Window for the comparison of the shift laws [K].
     progress : callable, optional
