@@ -85,6 +85,8 @@ def read_text(file: str | Path) -> str:
         if status.st_size > LARGEST_FILE:
             raise fault(f"{status.st_size} bytes", f"at most {LARGEST_FILE} bytes")
         return path.read_bytes().decode("utf-8-sig")
+    except FileError:
+        raise
     except FileNotFoundError:
         raise fault("nothing", "a file of this name", "check the spelling and the folder") from None
     except UnicodeDecodeError as error:
@@ -227,6 +229,7 @@ def write_atomically(file: str | Path, content: str | bytes) -> None:
     Parameters
     ----------
     file : str or Path
+        A link is followed; a device or pipe is written to directly.
     content : str or bytes
         Text is written as UTF-8.
 
@@ -235,26 +238,33 @@ def write_atomically(file: str | Path, content: str | bytes) -> None:
     FileError
         If the folder is missing or cannot be written.
     """
-    path = Path(file)
     data = content.encode("utf-8") if isinstance(content, str) else content
     try:
-        handle, temporary = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.", suffix=".part")
-        try:
-            with os.fdopen(handle, "wb") as stream:
-                stream.write(data)
-                stream.flush()
-                os.fsync(stream.fileno())
-            mode = path.stat().st_mode & 0o777 if path.exists() else 0o666 & ~_umask()
-            os.chmod(temporary, mode)
-            os.replace(temporary, path)
-        except BaseException:
-            with contextlib.suppress(OSError):
-                os.unlink(temporary)
-            raise
-    except OSError as error:
-        found = error.strerror or str(error)
+        path = Path(file).resolve()
+        if path.exists() and not (path.is_file() or path.is_dir()):
+            path.write_bytes(data)
+        else:
+            _replace(path, data)
+    except (OSError, ValueError) as error:
+        found = (error.strerror if isinstance(error, OSError) else None) or str(error)
         fault = Fault(key="file", found=found, expected="a file that can be written", hint="check the folder")
         raise FileError(str(file), [fault]) from None
+
+
+def _replace(path: Path, data: bytes) -> None:
+    handle, temporary = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.", suffix=".part")
+    try:
+        with os.fdopen(handle, "wb") as stream:
+            stream.write(data)
+            stream.flush()
+            os.fsync(stream.fileno())
+        mode = path.stat().st_mode & 0o777 if path.exists() else 0o666 & ~_umask()
+        os.chmod(temporary, mode)
+        os.replace(temporary, path)
+    except BaseException:
+        with contextlib.suppress(OSError):
+            os.unlink(temporary)
+        raise
 
 
 def _umask() -> int:
