@@ -165,6 +165,31 @@ def compare(
     raise typer.Exit(run(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json))
 
 
+@app.command()
+def steps(
+    card: CardFile,
+    path: PathFile,
+    tolerance: Annotated[str, typer.Option("--tolerance", metavar="X", help="1% or 0.01 of the path's peak stress.")],
+    shift_rule: Annotated[
+        str | None, typer.Option("--shift-rule", metavar="R", help="Only this one; recommends for it.")
+    ] = None,
+    recursion: Annotated[
+        str | None, typer.Option("--recursion", metavar="R", help="Only this one; recommends for it.")
+    ] = None,
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """How small must the increments of a path be, by update rule?
+
+    Example: cardproof steps cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml --tolerance 1%
+    """
+    from drivers.commands.steps import run
+
+    raise typer.Exit(
+        run(card, path, tolerance=tolerance, shift_rule=shift_rule, recursion=recursion, plot=plot, json_file=json)
+    )
+
+
 def main(arguments: list[str] | None = None) -> int:
     """Run the command line.
 

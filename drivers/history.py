@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import dataclasses
 import io
 from dataclasses import dataclass, replace
 
@@ -55,7 +54,7 @@ class History:
     def taken(self, rows: ArrayLike) -> History:
         """The history at some rows only; `peak_stress` stays that of the whole run."""
         index = np.asarray(rows, dtype=np.int64)
-        return dataclasses.replace(
+        return replace(
             self,
             segment=tuple(self.segment[k] for k in index),
             time=self.time[index],
@@ -64,6 +63,7 @@ class History:
             strain=self.strain[index],
             stress=self.stress[index],
             bound=None if self.bound is None else self.bound[index],
+            ends=None if self.ends is None else self.ends[index],
         )
 
     @property
@@ -80,20 +80,8 @@ class History:
         """Only the rows that end a segment, and the start."""
         labels = self.segment
         if self.ends is not None:
-            rows = np.flatnonzero(self.ends)
-        else:
-            rows = np.array([k for k in range(len(labels)) if labels[k : k + 1] != labels[k + 1 : k + 2]])
-        return replace(
-            self,
-            segment=tuple(labels[k] for k in rows),
-            time=self.time[rows],
-            temperature=self.temperature[rows],
-            reduced_time=None if self.reduced_time is None else self.reduced_time[rows],
-            strain=self.strain[rows],
-            stress=self.stress[rows],
-            bound=None if self.bound is None else self.bound[rows],
-            ends=np.ones(rows.size, dtype=np.bool_),
-        )
+            return self.taken(np.flatnonzero(self.ends))
+        return self.taken([k for k in range(len(labels)) if labels[k : k + 1] != labels[k + 1 : k + 2]])
 
 
 def csv_text(

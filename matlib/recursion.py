@@ -31,6 +31,8 @@ class Recursion:
         Order of convergence in the size of the increment.
     large_r : str
         What happens as `r` grows, in words.
+    right_limit : bool
+        Whether that is what the integral itself does.
     reference : str
         Source of the formula.
 
@@ -44,6 +46,7 @@ class Recursion:
     gain: Callable[[FloatArray], FloatArray]
     order: int
     large_r: str
+    right_limit: bool
     reference: str
 
 
@@ -85,6 +88,7 @@ RECURSIONS: dict[str, Recursion] = {
             gain=_mean_decay,
             order=2,
             large_r="right limit: the gain falls as 1/r, as the integral itself does",
+            right_limit=True,
             reference="R. L. Taylor, K. S. Pister, G. L. Goudreau, Int. J. Numer. Meth. Eng. 2 (1970) 45-59"
             " (from memory)",
         ),
@@ -94,6 +98,7 @@ RECURSIONS: dict[str, Recursion] = {
             gain=_exp_half,
             order=2,
             large_r="the gain underflows: the viscous stress of the increment is lost",
+            right_limit=False,
             reference="J. C. Simo, T. J. R. Hughes, Computational Inelasticity (1998), ch. 10 (from memory)",
         ),
         Recursion(
@@ -102,6 +107,7 @@ RECURSIONS: dict[str, Recursion] = {
             gain=_trapezoidal_gain,
             order=2,
             large_r="the decay tends to -1: the stress rings from increment to increment",
+            right_limit=False,
             reference="trapezoidal rule on the rate equation of one term (textbook)",
         ),
         Recursion(
@@ -110,6 +116,7 @@ RECURSIONS: dict[str, Recursion] = {
             gain=_implicit,
             order=1,
             large_r="the gain falls as 1/r: right limit, but first order",
+            right_limit=True,
             reference="backward Euler rule on the rate equation of one term (textbook)",
         ),
     )

@@ -1,0 +1,192 @@
+"""The study of increments as table, plain data and picture."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING, Any
+
+from rich.console import RenderableType
+from rich.table import Table
+from rich.text import Text
+
+from drivers.difference import Difference
+from drivers.report.data import envelope
+from drivers.report.tables import percent, place_text, plain_table, time_text, verdict_line
+from drivers.studies.ladder import RuleResult
+from drivers.studies.steps import StepsResult
+from matlib.card import Card
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+__all__ = ["steps_data", "steps_figure", "steps_tables"]
+
+
+def steps_data(result: StepsResult, card: Card) -> dict[str, Any]:
+    """The study as plain data, SI units."""
+    recommended = result.recommended
+    blame = result.blame
+    return envelope(
+        "steps",
+        result.holds,
+        card=card.document.name,
+        path=result.path.name,
+        tolerance=result.tolerance,
+        reference={"relative_bound": result.reference_bound, "estimated": result.estimated},
+        own={
+            "shift_rule": result.rule.shift_rule,
+            "recursion": result.rule.recursion,
+            "increments": result.path.increment_count,
+            "relative_error": result.own.relative,
+            "quantity": result.own.quantity,
+            "component": result.own.component,
+            "at": _place(result.own),
+        },
+        rules=[_rule_data(rule) for rule in result.rules],
+        recommended=[]
+        if recommended is None
+        else [
+            {
+                "segment": advice.segment,
+                "increments": advice.increments,
+                "largest_increment": advice.largest_increment,
+                "largest_temperature_change": advice.largest_temperature_change,
+            }
+            for advice in recommended.advice
+        ],
+        recommended_error=None if recommended is None else recommended.relative_error,
+        recommended_total=None if recommended is None else recommended.increments,
+        blame=None
+        if blame is None
+        else {
+            "segment": blame.segment,
+            "share": blame.share,
+            "cause": blame.cause,
+            "decades": blame.decades,
+            "ratio": blame.ratio,
+            "sentence": blame.sentence,
+        },
+    )
+
+
+def _place(difference: Difference) -> dict[str, Any]:
+    at = difference.at
+    return {"segment": at.segment, "time": at.time, "temperature": at.temperature}
+
+
+def _rule_data(result: RuleResult) -> dict[str, Any]:
+    return {
+        "shift_rule": result.rule.shift_rule,
+        "recursion": result.rule.recursion,
+        "errors": [{"increments": rung.increments, "relative_error": rung.relative_error} for rung in result.errors],
+        "order": result.order,
+        "increments_needed": result.increments_needed,
+    }
+
+
+def steps_tables(result: StepsResult, card: Card) -> list[RenderableType]:
+    """Verdict, what the error comes from, recommended increments, and the ladder of every rule."""
+    own, tolerance = result.own, percent(result.tolerance)
+    at = place_text(own.at, card.temperature_unit)
+    text = (
+        f"the path's own {result.path.increment_count} increments ({result.rule}) are off by {percent(own.relative)} of the peak "
+        f"{own.quantity} at most ({own.component} at {at}); the tolerance is {tolerance}"
+    )
+    bound = f"Judged on the reference solution, {'estimated' if result.estimated else 'guaranteed'} to {percent(result.reference_bound)}."
+    parts: list[RenderableType] = [verdict_line(result.holds, text), Text(bound)]
+    if result.blame is not None:
+        parts.append(Text(result.blame.sentence))
+    parts.append(_advice_table(result, card))
+    parts.append(_rules_table(result))
+    return parts
+
+
+def _advice_table(result: StepsResult, card: Card) -> RenderableType:
+    recommended = result.recommended
+    if recommended is None:
+        return Text(f"\nNo number of increments within the limit keeps {result.rule} within {percent(result.tolerance)}.")
+    title = (
+        f"\nRecommended for {result.rule}: {recommended.increments} increments in all, "
+        f"error {percent(recommended.relative_error)} when run"
+    )
+    unit = card.temperature_unit
+    columns = [("segment", "left"), ("own", "right"), ("recommended", "right"), ("longest", "right"), ("temperature step", "right")]
+    table = plain_table(title, columns)
+    for advice, segment in zip(recommended.advice, result.path.segments, strict=True):
+        step = unit.difference_from_si(advice.largest_temperature_change)
+        table.add_row(
+            advice.segment,
+            str(segment.increments) if segment.duration > 0.0 else "1",
+            str(advice.increments),
+            time_text(advice.largest_increment),
+            f"{step:.3g} {unit.name}" if step > 0.0 else "",
+        )
+    return table
+
+
+def _rules_table(result: StepsResult) -> Table:
+    title = f"\nIncrements that each rule needs for {percent(result.tolerance)}, the same number in every segment"
+    columns = [("shift rule", "left"), ("recursion", "left"), ("needed", "right"), ("order", "right"), ("error at", "right"), ("", "right")]
+    table = plain_table(title, columns)
+    for rule in sorted(result.rules, key=lambda r: r.increments_needed or math.inf):
+        last = rule.errors[-1]
+        table.add_row(
+            rule.rule.shift_rule,
+            rule.rule.recursion,
+            "more" if rule.increments_needed is None else str(rule.increments_needed),
+            "" if rule.order is None else f"{rule.order:.2f}",
+            str(last.increments),
+            percent(last.relative_error),
+        )
+    return table
+
+
+MARKS = ("o", "s", "^", "D", "v", "P")
+COLOURS = {"exponential": "#1b3a5c", "midpoint": "#d97706", "trapezoidal": "#0f766e", "backward-euler": "#6b7280"}
+DASHES = {"exponential": "-", "midpoint": "--", "trapezoidal": "-.", "backward-euler": ":"}
+
+
+def steps_figure(result: StepsResult) -> Figure:
+    """Error against increments, one line a rule, slopes to read, the tolerance as a line."""
+    from matplotlib.figure import Figure
+
+    figure = Figure(figsize=(9.0, 6.0), layout="constrained")
+    axes = figure.add_subplot()
+    shift_rules = list(dict.fromkeys(r.rule.shift_rule for r in result.rules))
+    for rule in result.rules:
+        order = "" if rule.order is None else f"  {rule.order:.1f}"
+        axes.loglog(
+            [rung.increments for rung in rule.errors],
+            [max(rung.relative_error, 1e-16) for rung in rule.errors],
+            color=COLOURS[rule.rule.recursion],
+            linestyle=DASHES[rule.rule.recursion],
+            marker=MARKS[shift_rules.index(rule.rule.shift_rule) % len(MARKS)],
+            markersize=4,
+            linewidth=1.2,
+            label=f"{rule.rule}{order}",
+        )
+    axes.axhline(result.tolerance, color="#b91c1c", linewidth=1.4)
+    axes.text(0.01, result.tolerance, " tolerance", color="#b91c1c", va="bottom", transform=axes.get_yaxis_transform())
+    axes.plot(
+        result.path.increment_count, max(result.own.relative, 1e-16), marker="*", markersize=13, color="#b91c1c", linestyle="none",
+        label="the path's own",
+    )  # fmt: skip
+    _draw_slopes(axes, result)
+    axes.set_xlabel("increments of the whole path [-]")
+    axes.set_ylabel("largest error, as a fraction of the peak [-]")
+    axes.set_title(f"{result.path.name}: error against increments", loc="left", fontsize=11, fontweight="bold")
+    axes.grid(True, which="major", color="#d1d5db", linewidth=0.5)
+    axes.spines[["top", "right"]].set_visible(False)
+    figure.legend(loc="outside right upper", fontsize=7, frameon=False, title="rule, observed order", title_fontsize=8)
+    return figure
+
+
+def _draw_slopes(axes: Any, result: StepsResult) -> None:
+    """Slopes 1 and 2 to read the lines by, from a corner that the lines leave free."""
+    counts = [rung.increments for rule in result.rules for rung in rule.errors] or [10]
+    errors = [rung.relative_error for rule in result.rules for rung in rule.errors if rung.relative_error > 0.0] or [1e-2]
+    left, right = min(counts), min(counts) * 8
+    for slope in (1, 2):
+        top = min(errors) * 8.0**slope
+        axes.plot([left, right], [top, top / 8.0**slope], color="black", linewidth=0.8)
+        axes.annotate(f"order {slope}", (left, top), fontsize=8, textcoords="offset points", xytext=(2, 4))
