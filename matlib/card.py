@@ -116,11 +116,12 @@ class Card:
         if "shift" not in faulty_tables:
             with _collected(faults, "shift"):
                 shift = build_shift(self.law_table, self.limits, self.temperature_unit)
-        with _collected(faults, "elastic"):
-            elastic = self._elastic()
-            if "prony" not in faulty_tables:
-                with _collected(faults, "prony"):
-                    series = self._shear_and_bulk(elastic)
+        if "elastic" not in faulty_tables:
+            with _collected(faults, "elastic"):
+                elastic = self._elastic()
+                if "prony" not in faulty_tables:
+                    with _collected(faults, "prony"):
+                        series = self._shear_and_bulk(elastic)
         if self.document.expansion is not None:
             expansion = self.document.expansion.alpha / self.temperature_unit.scale
         if shift is None or series is None:

@@ -80,7 +80,12 @@ def constant_faults(document: CardDocument, law_table: LawTable, limits: RangeTa
         Empty for constants of the right sign and order.
     """
     unit = TEMPERATURE[document.units.temperature]
-    faults = [] if document.prony is None else list(_series_faults(document, document.prony))
+    faults = [
+        ("elastic-constants", Fault(key=f"elastic.{name}", found=f"{value:g}", expected="a modulus > 0"))
+        for name, value in document.elastic.given.items()
+        if name != "nu" and not value > 0.0
+    ]
+    faults += [] if document.prony is None else _series_faults(document, document.prony)
     faults += _law_faults(law_table, "shift", unit)
     if limits.measured is not None and not unit.to_si(limits.measured[0]) > 0.0:
         found = shown(limits.measured)
