@@ -85,14 +85,15 @@ def take_stepwise(routine: Routine, block: Block, strain: FloatArray, memory: Fl
 
     Notes
     -----
-    Free components by Newton's method with the routine's tangent. A linear routine needs one correction.
+    Free components by Newton's method with the routine's tangent, and at least one correction, which is all that a
+    linear routine needs.
     """
     free = block.stress_controlled
     strains, stresses = np.empty_like(block.targets), np.empty_like(block.targets)
     extent = float(np.abs(strain).max())  # largest strain so far: what is remembered of it may cancel to rounding only
     for k, target in enumerate(block.targets):
         strain_end = np.where(free, strain, target)
-        for _ in range(NEWTON_LIMIT):
+        for taken in range(NEWTON_LIMIT):
             increment = Increment(
                 time=float(block.time[k]),
                 duration=float(block.duration[k]),
@@ -107,7 +108,7 @@ def take_stepwise(routine: Routine, block: Block, strain: FloatArray, memory: Fl
                 break
             extent = max(extent, float(np.abs(strain_end).max()))
             scale = np.abs(update.tangent).max() * extent + np.abs(update.stress).max()
-            if np.abs(residual).max() <= NEWTON_TOLERANCE * scale:
+            if np.abs(residual).max() <= (NEWTON_TOLERANCE if taken else 0.0) * scale:
                 break
             strain_end = strain_end.copy()
             try:

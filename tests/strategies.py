@@ -1,4 +1,4 @@
-"""Hypothesis strategies shared by all tests: series, shift laws, materials and card documents that are valid."""
+"""Hypothesis strategies shared by all tests: series, shift laws, materials, card documents and paths that are valid."""
 
 from __future__ import annotations
 
@@ -9,6 +9,7 @@ import numpy as np
 from hypothesis import strategies as st
 from hypothesis.strategies import DrawFn, SearchStrategy
 
+from drivers.path import MODES, Cycle, Path, Segment
 from matlib.material import Material
 from matlib.prony import PronySeries
 from matlib.shift import (
@@ -291,3 +292,65 @@ def card_tables(draw: DrawFn, T_low: float = COLD, T_high: float = HOT) -> dict[
             "time": [t / TIME_IN_S[time] for t in span],
         }
     return card
+
+
+def control_masks() -> SearchStrategy[np.ndarray]:
+    """Which of the six components follow a stress; all the others follow a strain."""
+    return st.lists(st.booleans(), min_size=6, max_size=6).map(np.array)
+
+
+@st.composite
+def segments(
+    draw: DrawFn,
+    stress_controlled: np.ndarray,
+    driven: tuple[int, ...],
+    T_low: float = COLD,
+    T_high: float = HOT,
+    max_increments: int = 6,
+) -> Segment:
+    """One straight stretch or jump; the `driven` components move or are held, all others stay at zero."""
+    held, targets = np.zeros(6, dtype=np.bool_), np.zeros(6)
+    if draw(st.integers(0, 3)) == 0:
+        held[list(driven)] = True
+    for c in driven if len(driven) == 6 else driven[:1]:
+        targets[c] = draw(st.floats(-1.0, 1.0)) * (1e6 if stress_controlled[c] else 0.02)
+    if len(driven) < 6:
+        targets[list(driven)] = targets[driven[0]]
+    return Segment(
+        label=draw(st.sampled_from(["pull", "dwell", "cool"])),
+        durations=np.array([draw(st.one_of(st.just(0.0), decades(-3, 5)))]),
+        temperatures=draw(st.one_of(st.none(), st.floats(T_low, T_high).map(lambda T: np.array([T])))),
+        targets=targets[np.newaxis],
+        stress_controlled=stress_controlled,
+        held=held,
+        increments=draw(st.integers(1, max_increments)),
+        spacing=draw(st.sampled_from(["even", "log"])),
+    )
+
+
+@st.composite
+def paths(
+    draw: DrawFn,
+    T_low: float = COLD,
+    T_high: float = HOT,
+    max_segments: int = 4,
+    max_increments: int = 6,
+    modes: tuple[str, ...] = tuple(MODES),
+) -> Path:
+    """Paths of every mode, driven by strain or by stress, with jumps, cycles and changes of temperature.
+
+    Temperatures stay between `T_low` and `T_high` [K], strains within 0.02, stresses within 1 MPa.
+    """
+    mode = MODES[draw(st.sampled_from(modes))]
+    driven, mask = mode.driven or tuple(range(6)), draw(control_masks())
+    if mode.driven:
+        by_stress = bool(mask[0])
+        mask = np.isin(np.arange(6), mode.free + (driven if by_stress else ()))
+    one = segments(mask, driven, T_low, T_high, max_increments)
+    cycles = st.builds(
+        lambda repeat, inner: Cycle(repeat=repeat, segments=tuple(inner)),
+        st.integers(1, 3),
+        st.lists(one, min_size=1, max_size=2),
+    )
+    parts = draw(st.lists(st.one_of(one, one, cycles), min_size=1, max_size=max_segments))
+    return Path(name="drawn", mode=mode, start_temperature=draw(st.floats(T_low, T_high)), parts=tuple(parts))

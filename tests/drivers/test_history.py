@@ -109,4 +109,4 @@ def test_rows_at_segment_ends_go_by_labels_where_nothing_else_is_known():
 def test_the_length_of_a_history_is_its_rows():
     assert len(history()) == 4
     with pytest.raises(AttributeError):
-        history().peak_stress = 0.0  # type: ignore[misc]
+        history().peak_stress = 0.0
