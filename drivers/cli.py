@@ -121,11 +121,20 @@ def drive(
         str | None, typer.Option("-o", "--output", metavar="HISTORY.csv", help="Write every kept row as CSV.")
     ] = None,
     shift_rule: Annotated[
-        str, typer.Option("--shift-rule", metavar="R", help="start, end, middle, mean-rate, mean-log or integrated.")
-    ] = "integrated",
+        str | None,
+        typer.Option(
+            "--shift-rule", metavar="R", help="start, end, middle, mean-rate, mean-log or integrated (default)."
+        ),
+    ] = None,
     recursion: Annotated[
-        str, typer.Option("--recursion", metavar="R", help="exponential, midpoint, trapezoidal or backward-euler.")
-    ] = "exponential",
+        str | None,
+        typer.Option(
+            "--recursion", metavar="R", help="exponential (default), midpoint, trapezoidal or backward-euler."
+        ),
+    ] = None,
+    exact: Annotated[
+        bool, typer.Option("--exact", help="The reference solution at the increment ends, with its bound.")
+    ] = False,
     keep: Annotated[
         str, typer.Option("--keep", metavar="WHICH", help="all, ends (of segments), or a number: every n-th increment.")
     ] = "all",
@@ -139,7 +148,17 @@ def drive(
     from drivers.commands.drive import run
 
     raise typer.Exit(
-        run(card, path, output=output, shift_rule=shift_rule, recursion=recursion, keep=keep, plot=plot, json_file=json)
+        run(
+            card,
+            path,
+            output=output,
+            shift_rule=shift_rule,
+            recursion=recursion,
+            exact=exact,
+            keep=keep,
+            plot=plot,
+            json_file=json,
+        )
     )
 
 

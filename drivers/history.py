@@ -7,7 +7,7 @@ import io
 from dataclasses import dataclass, replace
 
 import numpy as np
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from matlib.arrays import BoolArray, FloatArray
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, strain_from_mandel, stress_from_mandel
@@ -76,12 +76,24 @@ class History:
         """Stresses in the order s11 s22 s33 s23 s13 s12 [Pa], shape (n, 6)."""
         return stress_from_mandel(self.stress)
 
+    def kept(self, keep: str | int) -> History:
+        """Every row ("all"), those that end a segment ("ends"), or every n-th and those; the start always."""
+        if keep == "all":
+            return self
+        ends = self._ends()
+        if keep == "ends":
+            return self.taken(ends)
+        return self.taken(np.union1d(np.arange(0, len(self), int(keep)), ends))
+
     def at_segment_ends(self) -> History:
         """Only the rows that end a segment, and the start."""
-        labels = self.segment
+        return self.taken(self._ends())
+
+    def _ends(self) -> NDArray[np.int64]:
         if self.ends is not None:
-            return self.taken(np.flatnonzero(self.ends))
-        return self.taken([k for k in range(len(labels)) if labels[k : k + 1] != labels[k + 1 : k + 2]])
+            return np.flatnonzero(self.ends)
+        labels = self.segment
+        return np.array([k for k in range(len(labels)) if labels[k : k + 1] != labels[k + 1 : k + 2]])
 
 
 def csv_text(

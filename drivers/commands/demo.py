@@ -43,7 +43,11 @@ class _Case:
 CASES = (
     _Case(file="converted.card.toml", made="cardproof convert --to vft, a right conversion", expected="identical"),
     _Case(file="slip.card.toml", made="converted by hand, with a slip", expected="different"),
-    _Case(file="arrhenius.card.toml", made="cardproof convert --to arrhenius, the best plain Arrhenius fit", expected="different"),
+    _Case(
+        file="arrhenius.card.toml",
+        made="cardproof convert --to arrhenius, the best plain Arrhenius fit",
+        expected="different",
+    ),
 )
 
 
@@ -65,7 +69,9 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
         *findings_table(laboratory, findings),
         Text("\n2. Do the cards made from it say the same?  cardproof convert, cardproof compare", style="bold"),
         *(Text(f"   {case.file}: {case.made}") for case in CASES),
-        Text("   Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"),
+        Text(
+            "   Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"
+        ),
         _verdicts(comparisons, laboratory),
         Text(f"\nCards, path, history.csv, pictures and results in JSON are in {folder}. The case is invented."),
         Text(CAUTION, style="italic"),
@@ -119,7 +125,10 @@ def _verdicts(comparisons: list[tuple[_Case, Comparison]], laboratory: Card) -> 
     columns = [("card", "left"), ("largest stress error", "right"), ("on path", "left"), ("says the same?", "left")]
     table = plain_table("", columns)
     for case, comparison in comparisons:
-        result = max((p for p in comparison.paths if p.quantity == "stress"), key=lambda p: p.relative or 0.0)
+        result = max(
+            (p for p in comparison.paths if p.difference is None or p.difference.quantity == "stress"),
+            key=lambda p: p.relative or 0.0,
+        )
         style = "bold green" if comparison.holds else "bold red"
         error = "no answer" if result.relative is None else percent(result.relative)
         on = "(rounding)" if result.identical else result.path.name

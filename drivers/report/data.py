@@ -6,16 +6,19 @@ import json
 from collections.abc import Sequence
 from typing import Any
 
+from drivers.difference import Where
 from drivers.history import History
 from drivers.path import Path
+from drivers.reference import Reference
 from drivers.studies.compare import Comparison, PathComparison
+from drivers.studies.trial import Rule
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
 from matlib.version import __version__
 
-__all__ = ["checks_data", "comparison_data", "conversion_data", "drive_data", "envelope", "json_text"]
+__all__ = ["checks_data", "comparison_data", "conversion_data", "drive_data", "envelope", "json_text", "place_data"]
 
 UNITS = {"stress": "Pa", "time": "s", "temperature": "K"}
 
@@ -62,9 +65,13 @@ def conversion_data(converted: ConvertedCard, file: str) -> dict[str, Any]:
     )
 
 
-def drive_data(
-    history: History, card: Card, path: Path, *, file: str | None, shift_rule: str, recursion: str
-) -> dict[str, Any]:
+def _how_data(how: Rule | Reference) -> dict[str, Any]:
+    if isinstance(how, Rule):
+        return {"exact": False, "shift_rule": how.shift_rule, "recursion": how.recursion}
+    return {"exact": True, "reference": {"relative_bound": how.relative_bound, "estimated": how.estimated}}
+
+
+def drive_data(history: History, card: Card, path: Path, *, file: str | None, how: Rule | Reference) -> dict[str, Any]:
     """What a run of a path gave, in short; its rows are in the CSV file."""
     last = len(history) - 1
     return envelope(
@@ -74,8 +81,7 @@ def drive_data(
         path=path.name,
         rows=len(history),
         file=file,
-        shift_rule=shift_rule,
-        recursion=recursion,
+        **_how_data(how),
         increments=path.increment_count,
         peak_stress=history.peak_stress,
         end={
@@ -89,17 +95,26 @@ def drive_data(
 
 
 def _path_data(result: PathComparison) -> dict[str, Any]:
-    at = result.at
+    difference = result.difference
     return {
         "name": result.path.name,
-        "quantity": result.quantity,
-        "largest_difference": result.largest_difference,
+        "quantity": None if difference is None else difference.quantity,
+        "component": None if difference is None else difference.component,
+        "largest_difference": None if difference is None else difference.value,
         "relative": result.relative,
+        "bound": result.bound,
+        "estimated": result.estimated,
+        "identical": result.identical,
         "rounding": result.rounding,
-        "at": None if at is None else {"segment": at.segment, "time": at.time, "temperature": at.temperature},
+        "at": None if difference is None else place_data(difference.at),
         "holds": result.holds,
         "reason": result.reason,
     }
+
+
+def place_data(at: Where) -> dict[str, Any]:
+    """Segment, time and temperature."""
+    return {"segment": at.segment, "time": at.time, "temperature": at.temperature}
 
 
 def comparison_data(comparison: Comparison, a: Card, b: Card) -> dict[str, Any]:

@@ -10,7 +10,7 @@ from matplotlib.figure import Figure
 
 from drivers.history import History
 from drivers.path import Path
-from drivers.studies.compare import Comparison
+from drivers.studies.compare import Comparison, PathComparison
 from matlib.arrays import FloatArray
 from matlib.card import Card
 from matlib.errors import ShiftRangeError
@@ -120,7 +120,7 @@ def comparison_figure(comparison: Comparison, a: Card, b: Card) -> Figure:
         figure.add_subplot(grid[1, 0]),
         figure.add_subplot(grid[:, 1]),
     )
-    _draw_responses(upper, lower, worst.first, worst.second, worst.quantity, worst.component, a)
+    _draw_responses(upper, lower, worst, a)
     upper.set_title(f"worst path: {worst.path.name}", loc="left", fontsize=10, fontweight="bold", parse_math=False)
     _draw_shift_laws(right, a, b)
     names = f"A (solid): {a.name}\nB (dashed): {b.name}"
@@ -128,13 +128,15 @@ def comparison_figure(comparison: Comparison, a: Card, b: Card) -> Figure:
     return figure
 
 
-def _draw_responses(
-    upper: Axes, lower: Axes, first: History | None, second: History | None, quantity: str, component: int, card: Card
-) -> None:
+def _draw_responses(upper: Axes, lower: Axes, worst: PathComparison, card: Card) -> None:
+    first, second = worst.first, worst.second
     reference = first or second
     if reference is None:
         upper.text(0.5, 0.5, "no response", ha="center", transform=upper.transAxes)
         return
+    quantity = "stress" if worst.difference is None else worst.difference.quantity
+    names = STRESS_COMPONENTS if quantity == "stress" else STRAIN_COMPONENTS
+    component = _main_component(reference) if worst.difference is None else names.index(worst.difference.component)
     unit = _time_unit(float(reference.time[-1]))
 
     def values(history: History) -> FloatArray:
@@ -142,7 +144,7 @@ def _draw_responses(
             return card.stress_unit.from_si(history.stress_components[:, component])
         return history.strain_components[:, component]
 
-    names, of = (STRESS_COMPONENTS, card.stress_unit.name) if quantity == "stress" else (STRAIN_COMPONENTS, "-")
+    of = card.stress_unit.name if quantity == "stress" else "-"
     label = f"{names[component]} [{of}]"
     for history, style, name in ((first, FIRST, "A"), (second, SECOND, "B")):
         if history is not None:

@@ -9,8 +9,7 @@ from rich.console import RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from drivers.difference import Difference
-from drivers.report.data import envelope
+from drivers.report.data import envelope, place_data
 from drivers.report.tables import percent, place_text, plain_table, time_text, verdict_line
 from drivers.studies.ladder import RuleResult
 from drivers.studies.steps import StepsResult
@@ -40,7 +39,7 @@ def steps_data(result: StepsResult, card: Card) -> dict[str, Any]:
             "relative_error": result.own.relative,
             "quantity": result.own.quantity,
             "component": result.own.component,
-            "at": _place(result.own),
+            "at": place_data(result.own.at),
         },
         rules=[_rule_data(rule) for rule in result.rules],
         recommended=[]
@@ -67,11 +66,6 @@ def steps_data(result: StepsResult, card: Card) -> dict[str, Any]:
             "sentence": blame.sentence,
         },
     )
-
-
-def _place(difference: Difference) -> dict[str, Any]:
-    at = difference.at
-    return {"segment": at.segment, "time": at.time, "temperature": at.temperature}
 
 
 def _rule_data(result: RuleResult) -> dict[str, Any]:
@@ -104,13 +98,21 @@ def steps_tables(result: StepsResult, card: Card) -> list[RenderableType]:
 def _advice_table(result: StepsResult, card: Card) -> RenderableType:
     recommended = result.recommended
     if recommended is None:
-        return Text(f"\nNo number of increments within the limit keeps {result.rule} within {percent(result.tolerance)}.")
+        return Text(
+            f"\nNo number of increments within the limit keeps {result.rule} within {percent(result.tolerance)}."
+        )
     title = (
         f"\nRecommended for {result.rule}: {recommended.increments} increments in all, "
         f"error {percent(recommended.relative_error)} when run"
     )
     unit = card.temperature_unit
-    columns = [("segment", "left"), ("own", "right"), ("recommended", "right"), ("longest", "right"), ("temperature step", "right")]
+    columns = [
+        ("segment", "left"),
+        ("own", "right"),
+        ("recommended", "right"),
+        ("longest", "right"),
+        ("temperature step", "right"),
+    ]
     table = plain_table(title, columns)
     for advice, segment in zip(recommended.advice, result.path.segments, strict=True):
         step = unit.difference_from_si(advice.largest_temperature_change)
@@ -126,7 +128,14 @@ def _advice_table(result: StepsResult, card: Card) -> RenderableType:
 
 def _rules_table(result: StepsResult) -> Table:
     title = f"\nIncrements that each rule needs for {percent(result.tolerance)}, the same number in every segment"
-    columns = [("shift rule", "left"), ("recursion", "left"), ("needed", "right"), ("order", "right"), ("error at", "right"), ("", "right")]
+    columns = [
+        ("shift rule", "left"),
+        ("recursion", "left"),
+        ("needed", "right"),
+        ("order", "right"),
+        ("error at", "right"),
+        ("", "right"),
+    ]
     table = plain_table(title, columns)
     for rule in sorted(result.rules, key=lambda r: r.increments_needed or math.inf):
         last = rule.errors[-1]
@@ -184,7 +193,9 @@ def steps_figure(result: StepsResult) -> Figure:
 def _draw_slopes(axes: Any, result: StepsResult) -> None:
     """Slopes 1 and 2 to read the lines by, from a corner that the lines leave free."""
     counts = [rung.increments for rule in result.rules for rung in rule.errors] or [10]
-    errors = [rung.relative_error for rule in result.rules for rung in rule.errors if rung.relative_error > 0.0] or [1e-2]
+    errors = [rung.relative_error for rule in result.rules for rung in rule.errors if rung.relative_error > 0.0] or [
+        1e-2
+    ]
     left, right = min(counts), min(counts) * 8
     for slope in (1, 2):
         top = min(errors) * 8.0**slope

@@ -8,8 +8,9 @@ from rich.console import RenderableType
 from rich.table import Table
 from rich.text import Text
 
+from drivers.difference import Where
 from drivers.history import History
-from drivers.studies.compare import Comparison, PathComparison, Where
+from drivers.studies.compare import Comparison, PathComparison
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
@@ -125,7 +126,7 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
     strains, stresses = history.strain_components, stress.from_si(history.stress_components)
     shown = [c for c in range(6) if abs(strains[:, c]).max() > 0.0]
     loaded = [c for c in range(6) if abs(history.stress_components[:, c]).max() > 1e-12 * (history.peak_stress or 1.0)]
-    columns = [("segment", "left"), ("time [s]", "right"), (f"temperature [{temperature.name}]", "right")]
+    columns = [("segment", "left"), ("time [s]", "right"), (f"T [{temperature.name}]", "right")]
     columns += [(STRAIN_COMPONENTS[c], "right") for c in shown]
     columns += [(f"{STRESS_COMPONENTS[c]} [{stress.name}]", "right") for c in loaded]
     if history.bound is not None:
@@ -137,7 +138,7 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
             continue
         T = temperature.from_si(history.temperature[row])
         cells = [history.segment[row], f"{history.time[row]:.6g}", f"{T:.4g}"]
-        cells += [f"{strains[row, c]:.5g}" for c in shown] + [f"{stresses[row, c]:.6g}" for c in loaded]
+        cells += [f"{strains[row, c]:.4g}" for c in shown] + [f"{stresses[row, c]:.5g}" for c in loaded]
         if history.bound is not None:
             cells.append(f"{stress.from_si(float(history.bound[row])):.2g}")
         table.add_row(*cells)
@@ -150,18 +151,19 @@ def comparison_tables(comparison: Comparison, a: Card, b: Card) -> list[Renderab
     return [
         verdict_line(comparison.holds, f"{a.name} and {b.name} are {_same_text(comparison, worst)}"),
         Text(_shift_text(comparison, a.temperature_unit)),
+        *([Text(_bound_text(comparison))] if comparison.same != "identical" else []),
         _paths_table(_worst_first(comparison.paths), a),
     ]
 
 
 def _same_text(comparison: Comparison, worst: PathComparison) -> str:
-    if comparison.same == "identical":
-        bound = percent(max(p.rounding for p in comparison.paths))
-        difference = percent(worst.relative or 0.0)
-        return f"identical to rounding (largest difference {difference}, rounding bound {bound})"
-    if worst.relative is None:
+    difference = worst.difference
+    if difference is None:
         return f"different: no answer on path {worst.path.name!r}"
-    text = f"{percent(worst.relative)} of the peak {worst.quantity} apart on path {worst.path.name!r}"
+    if comparison.same == "identical":
+        largest = max(p.rounding for p in comparison.paths)
+        return f"identical to rounding (largest difference {percent(difference.relative)}, rounding bound {percent(largest)})"
+    text = f"{percent(difference.relative)} of the peak {difference.quantity} apart on path {worst.path.name!r}"
     if comparison.same == "different":
         return f"different: {text}"
     return f"within the tolerance of {percent(comparison.tolerance)}: at most {text}"
@@ -172,6 +174,13 @@ def _shift_text(comparison: Comparison, unit: Unit) -> str:
     if shift.decades is None or shift.temperature is None:
         return f"Shift laws: {shift.reason}"
     return f"Shift laws: at most {shift.decades:.3g} decades apart, at {temperature_text(shift.temperature, unit)}"
+
+
+def _bound_text(comparison: Comparison) -> str:
+    judged = [result for result in comparison.paths if not result.identical and result.difference is not None]
+    largest = max((result.bound for result in judged), default=0.0)
+    kind = "estimated" if any(result.estimated for result in judged) else "guaranteed"
+    return f"Differences are between reference solutions, {kind} to {percent(largest)}."
 
 
 def _worst_first(paths: Iterable[PathComparison]) -> list[PathComparison]:
@@ -192,10 +201,10 @@ def _paths_table(paths: Sequence[PathComparison], a: Card) -> Table:
         mark = Text("holds", style="green") if result.holds else Text("differs", style="red")
         if result.identical:
             mark = Text("identical", style="green")
-        if result.relative is None or result.at is None:
+        difference = result.difference
+        if difference is None:
             table.add_row(result.path.name, "no answer", "", result.reason, mark)
             continue
-        names = STRESS_COMPONENTS if result.quantity == "stress" else STRAIN_COMPONENTS
-        where = "" if result.relative == 0.0 else place_text(result.at, a.temperature_unit)
-        table.add_row(result.path.name, percent(result.relative), names[result.component], where, mark)
+        where = "" if difference.value == 0.0 else place_text(difference.at, a.temperature_unit)
+        table.add_row(result.path.name, percent(difference.relative), difference.component, where, mark)
     return table

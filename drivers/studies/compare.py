@@ -8,28 +8,28 @@ from typing import Literal
 
 import numpy as np
 
+from drivers.difference import Difference, largest_difference
 from drivers.history import History
 from drivers.path import Path
 from drivers.point import drive
+from drivers.reference import DEFAULT_ACCURACY, Reference, solve
 from matlib.errors import ParameterError, ShiftRangeError
 from matlib.material import Material
 from matlib.shift import ShiftLaw
 from matlib.shift.conversion import largest_difference_decades
 from matlib.viscoelastic import LinearViscoelastic
 
-__all__ = ["Comparison", "PathComparison", "Same", "ShiftDifference", "Where", "compare"]
+__all__ = ["Comparison", "PathComparison", "Same", "ShiftDifference", "compare"]
 
 Same = Literal["identical", "within tolerance", "different"]
 EPS = float(np.finfo(np.float64).eps)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Where:
-    """Where on a path something happens: segment label, time [s], temperature [K]."""
+ROWS = 48
+"""Rows of each straight segment on which two responses are held against each other, whatever the path's own increments."""
 
-    segment: str
-    time: float
-    temperature: float
+MOST_ROWS = 20_000
+TIGHTER, TIGHTEST = 0.02, 1e-10
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -60,40 +60,38 @@ class PathComparison:
     Parameters
     ----------
     path : Path
-    quantity : {"stress", "strain"}
-        Which of the two differs more, each relative to its own peak.
-    component : int
-        Which component differs most.
-    largest_difference : float or None
-        Of that component [Pa] or [-]; None where one card has no response.
-    relative : float or None
-        `largest_difference` as a fraction of the peak of the first response.
+    difference : Difference or None
+        Where the responses differ most; None where one card has none.
     rounding : float
-        What rounding alone can make of two equal cards, as such a fraction.
-    at : Where or None
+        What rounding alone can make of two equal cards, as a fraction of the peak.
+    identical : bool
+        Whether nothing but rounding lies between the two cards on this path.
+    bound : float
+        Half-width on `difference.relative`, of both reference solutions together; 0 where identical.
+    estimated : bool
+        Whether that half-width is an estimate.
     holds : bool
-        Whether `relative` is within the tolerance.
+        Whether the difference is within the tolerance, the bound allowed for.
     first, second : History or None
     reason : str
         Why there is no response.
     """
 
     path: Path
-    quantity: str
-    component: int
-    largest_difference: float | None
-    relative: float | None
+    difference: Difference | None
     rounding: float
-    at: Where | None
+    identical: bool
+    bound: float
+    estimated: bool
     holds: bool
     first: History | None
     second: History | None
     reason: str = ""
 
     @property
-    def identical(self) -> bool:
-        """Whether nothing but rounding lies between the two responses."""
-        return self.relative is not None and self.relative <= self.rounding
+    def relative(self) -> float | None:
+        """Largest difference as a fraction of the peak, or None."""
+        return None if self.difference is None else self.difference.relative
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -153,53 +151,85 @@ def rounding_bound(material: Material, path: Path, history: History) -> float:
     return 4.0 * EPS * (path.increment_count + 8.0 * cond) * magnified
 
 
-def _largest(first: History, second: History) -> tuple[str, int, int, float, float]:
-    """Quantity, row, component, difference and relative difference where two responses differ most."""
-    best = ("stress", 0, 0, 0.0, 0.0)
-    for quantity, a, b in (
-        ("stress", first.stress_components, second.stress_components),
-        ("strain", first.strain_components, second.strain_components),
-    ):
-        gap = np.abs(a - b)
-        peak = float(np.abs(a).max()) or float(np.abs(b).max())
-        if peak == 0.0:
-            continue
-        row, component = (int(i) for i in np.unravel_index(int(gap.argmax()), gap.shape))
-        relative = float(gap[row, component]) / peak
-        if relative > best[4]:
-            best = (quantity, row, component, float(gap[row, component]), relative)
-    return best
-
-
 def _compare_path(a: Material, b: Material, path: Path, tolerance: float) -> PathComparison:
+    """Rounding first, by the same increments on both; what is not rounding is judged on the reference solutions."""
+    rows = min(ROWS, max(4, MOST_ROWS // max(1, sum(1 for _ in path.unrolled()))))
+    common = path.with_increments(tuple(rows if s.durations.size == 1 else 1 for s in path.segments))
     responses: list[History | None] = []
     reasons = []
     for which, material in (("first", a), ("second", b)):
         try:
-            responses.append(drive(LinearViscoelastic(material=material), path))
+            responses.append(drive(LinearViscoelastic(material=material), common))
         except ShiftRangeError as error:
             responses.append(None)
             reasons.append(f"{which} card: {error}")
     first, second = responses
     if first is None or second is None:
         return PathComparison(
-            path=path, quantity="stress", component=0, largest_difference=None, relative=None, rounding=0.0, at=None,
-            holds=False, first=first, second=second, reason="; ".join(reasons),
-        )  # fmt: skip
-    quantity, row, component, difference, relative = _largest(first, second)
-    rounding = rounding_bound(a, path, first) + rounding_bound(b, path, second)
+            path=path,
+            difference=None,
+            rounding=0.0,
+            identical=False,
+            bound=0.0,
+            estimated=False,
+            holds=False,
+            first=first,
+            second=second,
+            reason="; ".join(reasons),
+        )
+    difference = largest_difference(first, second)
+    rounding = rounding_bound(a, common, first) + rounding_bound(b, common, second)
+    if difference.relative <= rounding:
+        return PathComparison(
+            path=path,
+            difference=difference,
+            rounding=rounding,
+            identical=True,
+            bound=0.0,
+            estimated=False,
+            holds=True,
+            first=first,
+            second=second,
+        )
+    return _judged(a, b, path, common, tolerance, rounding)
+
+
+def _judged(a: Material, b: Material, path: Path, common: Path, tolerance: float, rounding: float) -> PathComparison:
+    accuracy = DEFAULT_ACCURACY
+    while True:
+        one, other = (solve(material, common, accuracy=accuracy) for material in (a, b))
+        difference = largest_difference(one.history, other.history)
+        bound = _bound(one, other)
+        undecided = abs(difference.relative - tolerance) <= bound
+        if not undecided or accuracy * TIGHTER < TIGHTEST:
+            break
+        accuracy *= TIGHTER
     return PathComparison(
         path=path,
-        quantity=quantity,
-        component=component,
-        largest_difference=difference,
-        relative=relative,
+        difference=difference,
         rounding=rounding,
-        at=Where(segment=first.segment[row], time=float(first.time[row]), temperature=float(first.temperature[row])),
-        holds=relative <= max(tolerance, rounding),
-        first=first,
-        second=second,
+        identical=False,
+        bound=bound,
+        estimated=one.estimated or other.estimated,
+        holds=difference.relative + bound <= tolerance,
+        first=one.history,
+        second=other.history,
     )
+
+
+def _bound(one: Reference, other: Reference) -> float:
+    """Half-widths of both solutions as a fraction of the peak of the first."""
+    shares = []
+    for first, second, values in (
+        (one.history.bound, other.history.bound, one.history.stress_components),
+        (one.strain_bound, other.strain_bound, one.history.strain_components),
+    ):
+        assert first is not None
+        assert second is not None
+        peak = float(np.abs(values).max())
+        if peak > 0.0:
+            shares.append(float((first + second).max()) / peak)
+    return max(shares, default=0.0)
 
 
 def compare(

@@ -10,7 +10,7 @@ import numpy as np
 from drivers.path import Path
 from drivers.studies.trial import Counts, Rule, Trials
 
-__all__ = ["Rung", "RuleResult", "climb", "total_increments"]
+__all__ = ["RuleResult", "Rung", "climb", "total_increments"]
 
 LARGEST_RUN = 150_000
 """Increments of a run at most; a rule that needs more is said to need more."""
@@ -104,9 +104,7 @@ def _observed_order(errors: dict[int, float], bound: float) -> float | None:
     clear = [(f, e) for f, e in errors.items() if e > NOISE * bound]
     if len(clear) < 3:
         return None
-    slopes = [
-        math.log(e1 / e2) / math.log(f2 / f1) for (f1, e1), (f2, e2) in zip(clear[-3:], clear[-2:], strict=False)
-    ]
+    slopes = [math.log(e1 / e2) / math.log(f2 / f1) for (f1, e1), (f2, e2) in zip(clear[-3:], clear[-2:], strict=False)]
     if min(slopes) < 0.2 or abs(slopes[1] - slopes[0]) > 0.5:
         return None
     return slopes[-1]
