@@ -24,7 +24,7 @@ from matlib.shift import PluginError, ShiftLaw
 from matlib.shift_tables import LawTable, RangeTable, build_shift, parse_shift, split_range
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
-__all__ = ["Card", "plain", "read_card"]
+__all__ = ["Card", "parse_card", "plain", "read_card"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -206,7 +206,28 @@ def read_card(file: str | Path) -> Card:
     FileError
         With every fault of the file at once.
     """
-    name, data = str(file), read_toml(file)
+    return parse_card(read_toml(file), str(file))
+
+
+def parse_card(data: dict[str, Any], file: str) -> Card:
+    """Make a card of plain tables.
+
+    Parameters
+    ----------
+    data : dict
+        As read from TOML.
+    file : str
+        What to call it in messages.
+
+    Returns
+    -------
+    Card
+
+    Raises
+    ------
+    FileError
+        With every fault at once.
+    """
     faults: list[Fault] = []
     document, law_table, limits = None, None, None
     try:
@@ -227,8 +248,8 @@ def read_card(file: str | Path) -> Card:
     if document is not None:
         faults += contradictions(document)
     if faults or document is None or law_table is None or limits is None:
-        raise FileError(name, faults)
-    return Card(file=name, document=document, law_table=law_table, limits=limits)
+        raise FileError(file, faults)
+    return Card(file=file, document=document, law_table=law_table, limits=limits)
 
 
 def plain(document: CardDocument) -> dict[str, Any]:

@@ -3,19 +3,17 @@
 from __future__ import annotations
 
 import copy
+import math
 from dataclasses import dataclass
 from typing import Any, Literal
 
-from matlib.card import Card, plain
-from matlib.errors import ConversionError
+from matlib.card import Card, parse_card, plain
+from matlib.errors import ConversionError, FileError
 from matlib.shift.conversion import Conversion, convert_law
 from matlib.shift_tables import written_shift
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
 __all__ = ["ConvertedCard", "convert_card"]
-
-DIGITS = 15
-"""Figures that a converted temperature is written with: one less than a double may need, so that 80 degC stays 80.0."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -88,7 +86,7 @@ def convert_card(
     FileError
         If the card is no material.
     ConversionError
-        If there is no such conversion, or it needs a range.
+        If there is no such conversion, it needs a range, or the new card would have numbers that no card may have.
     """
     law = card.material().shift
     if T_range is None and card.limits.measured is None:
@@ -98,8 +96,12 @@ def convert_card(
     tables = _in_units(plain(card.document), card, names, conversion.time_factor)
     temperature = TEMPERATURE[names["temperature"]]
     shift = written_shift(conversion.law, temperature, like=card.law_table)
-    tables["shift"] = _neat(shift)
+    tables["shift"] = _neat(shift, temperature)
     tables["made_from"] = _origin(card, conversion, temperature)
+    try:
+        parse_card(tables, card.file).material()
+    except FileError as error:
+        raise ConversionError(f"the converted card would be none: {error.faults[0]}") from None
     return ConvertedCard(conversion=conversion, source=card.file, tables=tables)
 
 
@@ -138,7 +140,7 @@ def _in_units(tables: dict[str, Any], card: Card, names: dict[str, str], time_fa
         if degree != 1.0 or card.temperature_unit.name != names["temperature"]:
             unit = TEMPERATURE[names["temperature"]]
             T = [unit.from_si(card.temperature_unit.to_si(value)) for value in new["service"]["temperature"]]
-            new["service"]["temperature"] = [_rounded(value) for value in T]
+            new["service"]["temperature"] = [_rounded(value, unit) for value in T]
     return new
 
 
@@ -147,20 +149,28 @@ def _scaled(value: float, factor: float) -> float:
     return value if factor == 1.0 else value * factor
 
 
-def _rounded(value: float) -> float:
-    return float(f"{value:.{DIGITS}g}")
+def _rounded(value: float, unit: Unit) -> float:
+    """A temperature without the digits that the zero point of its unit leaves behind: 80.0 for 79.99999999999994."""
+    kelvin = unit.to_si(value)
+    for digits in range(1, 16):
+        short = float(f"{value:.{digits}g}")
+        if abs(unit.to_si(short) - kelvin) <= 2.0 * math.ulp(kelvin):
+            return short
+    return value
 
 
-def _neat(shift: dict[str, Any]) -> dict[str, Any]:
-    """Temperatures without the digits that a unit's zero point leaves behind."""
+def _neat(shift: dict[str, Any], unit: Unit) -> dict[str, Any]:
     neat = dict(shift)
-    for key in ("T_ref", "T_inf"):
-        if key in neat:
-            neat[key] = _rounded(neat[key])
-    if "measured" in neat:
-        neat["measured"] = [_rounded(T) for T in neat["measured"]]
-    if "points" in neat:
-        neat["points"] = [[_rounded(T), a] for T, a in neat["points"]]
+    for key, value in shift.items():
+        match key:
+            case "T_ref" | "T_inf" | "at":
+                neat[key] = _rounded(value, unit)
+            case "measured":
+                neat[key] = [_rounded(T, unit) for T in value]
+            case "points":
+                neat[key] = [[_rounded(T, unit), a] for T, a in value]
+            case "below" | "above":
+                neat[key] = _neat(value, unit)
     return neat
 
 
@@ -176,9 +186,9 @@ def _origin(card: Card, conversion: Conversion, temperature: Unit) -> dict[str, 
     if not conversion.exact:
         origin["largest_error_decades"] = conversion.largest_error_decades
         if conversion.error_at is not None:
-            origin["error_at"] = _rounded(temperature.from_si(conversion.error_at))
+            origin["error_at"] = _rounded(temperature.from_si(conversion.error_at), temperature)
         if conversion.fitted_range is not None:
-            origin["range"] = [_rounded(temperature.from_si(T)) for T in conversion.fitted_range]
+            origin["range"] = [_rounded(temperature.from_si(T), temperature) for T in conversion.fitted_range]
     if conversion.note:
         origin["note"] = conversion.note
     return origin
