@@ -311,7 +311,7 @@ def segment_blocks(
     targets = np.where(segment.held, values, segment.targets)
     T_ends = segment.temperatures if segment.temperatures is not None else np.full(len(targets), temperature)
     pending: list[tuple[FloatArray, FloatArray, FloatArray, FloatArray]] = []
-    size, T_block = 0, temperature
+    size, T_block, time_block = 0, temperature, time
     last = len(targets) - 1
     for piece, (duration, T_end, target) in enumerate(zip(segment.durations, T_ends, targets, strict=True)):
         count = segment.increments if duration > 0.0 else 1
@@ -321,7 +321,7 @@ def segment_blocks(
             ending = ends[:, np.newaxis]
             pending.append(
                 (
-                    time + (ends - lengths) * duration,
+                    time + ends * duration,
                     lengths * duration,
                     np.where(ends < 1.0, temperature + ends * (T_end - temperature), T_end),
                     np.where(ending < 1.0, values + ending * (target - values), target),
@@ -331,11 +331,12 @@ def segment_blocks(
             if size >= limit or (piece == last and stop == count):
                 times, durations, T, rows = (np.concatenate(column) for column in zip(*pending, strict=True))
                 yield Block(
-                    time=times,
+                    time=np.concatenate([[time_block], times[:-1]]),
+                    time_end=times,
                     duration=durations,
                     temperature=np.concatenate([[T_block], T]),
                     targets=rows,
                     stress_controlled=segment.stress_controlled,
                 )
-                pending, size, T_block = [], 0, float(T[-1])
+                pending, size, T_block, time_block = [], 0, float(T[-1]), float(times[-1])
         time, temperature, values = time + float(duration), float(T_end), target

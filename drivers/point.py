@@ -161,7 +161,7 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
             done += block.duration.size
             yield _Rows(
                 label=label,
-                time=block.time + block.duration,
+                time=block.time_end,
                 temperature=T[1:],
                 reduced_time=clock,
                 response=response,
@@ -169,8 +169,7 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
             )
             strain, stress, memory = response.strain[-1], response.stress[-1], response.memory
             xi = xi if clock is None else float(clock[-1])
-            temperature = float(T[-1])
-        time += segment.duration
+            temperature, time = float(T[-1]), float(block.time_end[-1])
 
 
 def _kept(rows: _Rows, before: int, keep: str | int) -> BoolArray:

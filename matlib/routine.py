@@ -81,8 +81,8 @@ class Block:
 
     Parameters
     ----------
-    time : ndarray, shape (n,)
-        Time at the start of each increment [s].
+    time, time_end : ndarray, shape (n,)
+        Time at the start and at the end of each increment [s]; never runs backwards, not even by a rounding.
     duration : ndarray, shape (n,)
         Lengths [s], ``>= 0``.
     temperature : ndarray, shape (n + 1,)
@@ -95,6 +95,7 @@ class Block:
     """
 
     time: FloatArray
+    time_end: FloatArray
     duration: FloatArray
     temperature: FloatArray
     targets: FloatArray

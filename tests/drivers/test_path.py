@@ -184,7 +184,7 @@ def test_blocks_of_any_size_make_the_same_increments(limit, increments, spacing)
     whole, cut = blocks_of(segment, 10**6), blocks_of(segment, limit)
     assert len(whole) == 1
     assert sum(block.duration.size for block in cut) == segment.increment_count == 2 * increments + 1
-    for name in ("time", "duration", "targets"):
+    for name in ("time", "time_end", "duration", "targets"):
         np.testing.assert_array_equal(np.concatenate([getattr(b, name) for b in cut]), getattr(whole[0], name))
     np.testing.assert_array_equal(
         np.concatenate([[300.0], *(block.temperature[1:] for block in cut)]), whole[0].temperature
@@ -200,6 +200,20 @@ def test_a_block_moves_straight_from_where_it_starts_to_its_targets():
     np.testing.assert_allclose(block.targets[:, 0], [0.0036, 0.0052, 0.0068, 0.0084, 0.01], rtol=1e-14)
     assert block.targets[-1, 0] == 0.01  # exactly: a hold after it stands still
     assert block.temperature[-1] == 350.0
+
+
+@given(start=st.floats(0.0, 1e9), durations=st.lists(st.floats(0.0, 1e3), min_size=1, max_size=4), n=st.integers(1, 300))
+def test_time_never_runs_backwards_and_ends_where_it_should(start, durations, n):
+    count = len(durations)
+    segment = pull(durations=durations, targets=np.zeros((count, 6)), increments=n, spacing="log")
+    blocks = list(segment_blocks(segment, start, 300.0, np.zeros(6), 7))
+    time = np.concatenate([[start], *(block.time_end for block in blocks)])
+    assert np.all(np.diff(time) >= 0.0)
+    np.testing.assert_array_equal(np.concatenate([block.time for block in blocks]), time[:-1])
+    expected = start
+    for duration in durations:
+        expected += duration
+    assert time[-1] == expected
 
 
 def test_what_is_held_stays_at_its_value_and_a_missing_temperature_is_held():
