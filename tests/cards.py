@@ -18,7 +18,7 @@ SOUND: dict[str, Any] = {
     "elastic": {"E": 3000.0, "nu": 0.35, "state": "instantaneous"},
     "prony": {
         "relative_to": "instantaneous",
-        "shear": [[1e-2, 0.2], [1.0, 0.3], [1e2, 0.2]],
+        "shear": [[1e-6, 0.1], [1e-3, 0.1], [1.0, 0.2], [1e3, 0.2], [1e8, 0.1]],
         "bulk": [[1.0, 0.1]],
     },
     "shift": {
@@ -31,7 +31,7 @@ SOUND: dict[str, Any] = {
         "outside": "extrapolate",
     },
     "expansion": {"alpha": 6.2e-5},
-    "service": {"temperature": [60.0, 110.0], "time": [1e-2, 1e-1]},
+    "service": {"temperature": [60.0, 110.0], "time": [1e-1, 1e2]},
 }
 """A card with nothing to say about."""
 
