@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 from hypothesis import strategies as st
@@ -89,8 +89,8 @@ def offset_constants(draw: DrawFn, T_low: float, T_high: float) -> tuple[float, 
 def wlf_laws(draw: DrawFn, T_low: float, T_high: float) -> WLF:
     """WLF laws in either base."""
     B, T_inf, T_ref = draw(offset_constants(T_low, T_high))
-    base = draw(st.sampled_from([10, "e"]))
-    C2 = T_ref - T_inf
+    bases: tuple[Literal[10, "e"], ...] = (10, "e")
+    base, C2 = draw(st.sampled_from(bases)), T_ref - T_inf
     return WLF(C1=B / C2 / (LN10 if base == 10 else 1.0), C2=C2, T_ref=T_ref, base=base)
 
 

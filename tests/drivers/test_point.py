@@ -181,7 +181,7 @@ def test_the_peak_counts_increments_that_are_not_kept():
     up, down = segment("uniaxial stress"), segment("uniaxial stress", value=0.0)
     both = Segment(
         label="up and down",
-        durations=[1.0, 1.0],
+        durations=np.ones(2),
         temperatures=None,
         targets=np.concatenate([up.targets, down.targets]),
         stress_controlled=up.stress_controlled,

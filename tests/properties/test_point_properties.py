@@ -13,7 +13,7 @@ from hypothesis import strategies as st
 from drivers.history import History
 from drivers.path import MODES, Cycle, Path, Segment, fractions
 from drivers.point import drive
-from matlib.arrays import FloatArray
+from matlib.arrays import BoolArray, FloatArray
 from matlib.material import Material
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS
@@ -74,7 +74,7 @@ def durations(path: Path) -> FloatArray:
     )
 
 
-def sampled(path: Path, lengths: FloatArray, h: History, targets: FloatArray, controlled: FloatArray) -> Path:
+def sampled(path: Path, lengths: FloatArray, h: History, targets: FloatArray, controlled: BoolArray) -> Path:
     """One segment that goes straight from row to row of `h`."""
     segment = Segment(
         label="sampled",
@@ -242,7 +242,7 @@ def test_no_energy_comes_out_of_a_closed_strain_cycle_from_rest(material, legs, 
 @given(tau=decades(-2, 2), modulus=decades(6, 9))
 @settings(max_examples=10)
 def test_a_steady_shear_cycle_dissipates_what_the_loss_modulus_says(tau, modulus):
-    series = PronySeries(equilibrium=modulus, moduli=[0.5 * modulus, modulus], times=[tau, 3.0 * tau])
+    series = PronySeries(equilibrium=modulus, moduli=np.array([0.5, 1.0]) * modulus, times=np.array([1.0, 3.0]) * tau)
     material = Material(shear=series, bulk=PronySeries.elastic(modulus), shift=NoShift())
     omega, n, rounds, amplitude = 1.0 / tau, 800, 8, 0.01  # after 8 rounds the start is forgotten to exp(-16 pi / 3)
     t = np.arange(rounds * n + 1) * (2.0 * math.pi / omega / n)
@@ -273,8 +273,8 @@ def peak_memory(count: int) -> int:
     shear = PronySeries.from_fractions(1e9, [0.3, 0.3], [1.0, 10.0])
     material = Material(shear=shear, bulk=PronySeries.elastic(2e9), shift=NoShift())
     segment = Segment(
-        label="pull", durations=[1.0], temperatures=[310.0], targets=[[0.01] + [0.0] * 5], stress_controlled=FREE, held=FREE,
-        increments=count,
+        label="pull", durations=np.ones(1), temperatures=np.array([310.0]), targets=0.01 * np.eye(6)[:1],
+        stress_controlled=FREE, held=FREE, increments=count,
     )  # fmt: skip
     path = Path(name="p", mode=MODES["uniaxial strain"], start_temperature=300.0, parts=(segment,))
     routine = LinearViscoelastic(material=material)
