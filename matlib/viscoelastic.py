@@ -85,8 +85,7 @@ class LinearViscoelastic(BlockRoutine):
         ShiftRangeError
             If the shift law has no answer at a temperature of the increment.
         """
-        if memory.shape != (self.memory_size,):
-            raise ParameterError("memory", f"of shape ({self.memory_size},)", memory.shape)
+        _require_shape("memory", memory, (self.memory_size,))
         if not 0.0 <= increment.duration < np.inf:
             raise ParameterError("duration", "finite and >= 0 s", increment.duration)
         shear, bulk = self.material.shear, self.material.bulk
@@ -113,20 +112,39 @@ class LinearViscoelastic(BlockRoutine):
         return Update(stress, tangent, np.concatenate([[theta_new], p_new, h_new.ravel()]))
 
     def run(self, block: Block, strain: FloatArray, memory: FloatArray) -> BlockResponse:
-        """Take all increments of a block in one compiled call; `update` and mixed control give the same, one by one."""
+        """Take all increments of a block in one compiled call; `update` and mixed control give the same, one by one.
+
+        Raises
+        ------
+        ParameterError
+            If an array has a shape that does not belong to the block or the material, a duration is negative or not
+            finite, or a stress is to be followed where the recursion leaves no stiffness: a liquid, midpoint, and an
+            increment of very many relaxation times.
+        ShiftRangeError
+            If the shift law has no answer at a temperature of the block.
+        """
         from matlib.kernels import run_block
 
         shear, bulk = self.material.shear, self.material.bulk
-        T = block.temperature
+        T, n = block.temperature, block.duration.size
+        _require_shape("memory", memory, (self.memory_size,))
+        _require_shape("strain", strain, (6,))
+        _require_shape("stress_controlled", block.stress_controlled, (6,))
+        _require_shape("targets", block.targets, (n, 6))
+        _require_shape("temperature", T, (n + 1,))
         dxi = self.reduced_time(block.duration, T[:-1], T[1:])
         shear_decay, shear_gain = self._weights(shear, dxi)
         bulk_decay, bulk_gain = self._weights(bulk, dxi)
+        if block.stress_controlled.any():
+            _require_stiffness(block, shear.equilibrium + shear_gain @ shear.moduli)
+        if block.stress_controlled[:3].all():
+            _require_stiffness(block, bulk.equilibrium + bulk_gain @ bulk.moduli)
         strain_end, theta, p = strain.copy(), memory[:1].copy(), memory[1 : 1 + bulk.times.size].copy()
         h = memory[1 + bulk.times.size :].reshape(6, -1).copy()
         strain_out, stress_out = np.empty_like(block.targets), np.empty_like(block.targets)
         run_block(
             frozen(block.targets),
-            block.stress_controlled,
+            block.stress_controlled.copy(),
             frozen(3.0 * self.material.expansion * np.diff(T)),
             frozen(shear_decay),
             frozen(shear_gain),
@@ -144,3 +162,21 @@ class LinearViscoelastic(BlockRoutine):
             stress_out,
         )
         return BlockResponse(strain_out, stress_out, np.concatenate([theta, p, h.ravel()]))
+
+
+def _require_shape(name: str, array: npt.NDArray[np.generic], shape: tuple[int, ...]) -> None:
+    """The kernel checks no bounds, so its caller does."""
+    if array.shape != shape:
+        raise ParameterError(name, f"of shape {shape}", array.shape)
+
+
+def _require_stiffness(block: Block, modulus: FloatArray) -> None:
+    """No strain leads to a stress where nothing resists."""
+    soft = np.flatnonzero(~(modulus > 0.0))
+    if soft.size:
+        raise ParameterError(
+            "duration",
+            "short enough that the recursion leaves a stiffness, where a component follows a stress",
+            f"{float(block.duration[soft[0]]):g} s from {float(block.time[soft[0]]):g} s on",
+            "take smaller increments, or the exponential recursion",
+        )
