@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,7 +14,7 @@ from matlib.errors import ShiftRangeError
 from matlib.material import Material
 from matlib.tensors import mandel_from_strain, mandel_from_stress
 
-__all__ = ["Window", "battery", "card_window"]
+__all__ = ["Window", "battery", "card_window", "paths_window"]
 
 STRAIN = 0.01
 """Strain of every battery path: small, and linear response makes its size irrelevant."""
@@ -86,6 +87,17 @@ def card_window(card: Card, material: Material) -> Window:
         return Window(temperature=(T_ref, T_ref), time=time, source="T_ref and relaxation times of the card")
     return Window(
         temperature=(low, T_ref + WIDTH / 2), time=time, source="T_ref +- 20 K and relaxation times of the card"
+    )
+
+
+def paths_window(paths: Sequence[Path]) -> Window:
+    """Window that paths cover: their temperatures, and times from a thousandth of their shortest segment to their longest run."""
+    ranges = [path.temperature_range for path in paths]
+    durations = [float(d) for path in paths for s in path.segments for d in s.durations if d > 0.0] or [1.0]
+    return Window(
+        temperature=(min(low for low, _ in ranges), max(high for _, high in ranges)),
+        time=(1e-3 * min(durations), max(*durations, *(path.duration for path in paths))),
+        source="the paths given",
     )
 
 

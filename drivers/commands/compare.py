@@ -4,17 +4,22 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from drivers.battery import battery, card_window
+from drivers.battery import Window, battery, card_window, paths_window
 from drivers.commands.inputs import gather, read_all
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.data import comparison_data
 from drivers.report.progress import progress
-from drivers.report.tables import comparison_tables
+from drivers.report.tables import comparison_tables, slip_tables
 from drivers.studies.compare import Comparison, compare
+from drivers.studies.slips import Slip, find_slips
+from drivers.studies.slips.evidence import Evidence
 from matlib.card import Card, read_card
 
-__all__ = ["compare_cards", "run"]
+__all__ = ["compare_cards", "likely_slips", "run", "what_to_compare"]
+
+USUAL_CANDIDATES = 8000
 
 
 def run(
@@ -31,23 +36,39 @@ def run(
     require_picture(plot)
     fraction = parse_tolerance(tolerance)
     a, b = read_all(read_card, [file_a, file_b])
-    comparison = compare_cards(a, b, paths, fraction)
+    given, window = what_to_compare(a, b, paths)
+    comparison = compare_cards(a, b, given, window, fraction)
+    slips = likely_slips(a, b, given, window, comparison)
     if plot is not None:
         from drivers.report.plots import comparison_figure
 
         save_figure(comparison_figure(comparison, a, b), plot)
-    return deliver(comparison_data(comparison, a, b), comparison_tables(comparison, a, b), json_file)
+    tables = [*comparison_tables(comparison, a, b)[:1], *slip_tables(slips), *comparison_tables(comparison, a, b)[1:]]
+    return deliver(comparison_data(comparison, a, b, slips), tables, json_file)
 
 
-def compare_cards(a: Card, b: Card, path_files: Sequence[str], tolerance: float) -> Comparison:
-    """Compare two cards on the paths of files, or on the battery of the first card that states a window."""
+def what_to_compare(a: Card, b: Card, path_files: Sequence[str]) -> tuple[tuple[Path, ...], Window]:
+    """The paths of files and the window that they cover; or the battery of the first card that states a window."""
     first, second = gather([a.material, b.material])
     if path_files:
         paths = tuple(read_all(read_path, path_files))
-        ranges = [path.temperature_range for path in paths]
-        temperatures = (min(low for low, _ in ranges), max(high for _, high in ranges))
-    else:
-        window = card_window(a, first) if a.document.service or not b.document.service else card_window(b, second)
-        paths, temperatures = battery(first, window), window.temperature
+        return paths, paths_window(paths)
+    window = card_window(a, first) if a.document.service or not b.document.service else card_window(b, second)
+    return battery(first, window), window
+
+
+def compare_cards(a: Card, b: Card, paths: Sequence[Path], window: Window, tolerance: float) -> Comparison:
+    """Compare two cards on paths; progress is shown."""
     with progress("comparing", len(paths)) as advance:
-        return compare(first, second, paths, tolerance=tolerance, temperatures=temperatures, progress=advance)
+        return compare(
+            a.material(), b.material(), paths, tolerance=tolerance, temperatures=window.temperature, progress=advance
+        )
+
+
+def likely_slips(a: Card, b: Card, paths: Sequence[Path], window: Window, comparison: Comparison) -> tuple[Slip, ...]:
+    """Slips that explain why two cards differ; none where they do not."""
+    if comparison.same == "identical":
+        return ()
+    evidence = Evidence(temperature=window.temperature, time=window.time, paths=paths)
+    with progress("looking for slips", USUAL_CANDIDATES) as advance:
+        return find_slips(a, b, evidence, progress=advance)

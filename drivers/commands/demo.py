@@ -9,14 +9,15 @@ from pathlib import Path
 from rich.console import RenderableType
 from rich.text import Text
 
-from drivers.commands.compare import compare_cards
+from drivers.commands.compare import compare_cards, likely_slips, what_to_compare
 from drivers.commands.output import deliver, require_folder, save_figure
 from drivers.history import csv_text
 from drivers.path_file import read_path
 from drivers.point import drive
 from drivers.report.data import checks_data, comparison_data, envelope, json_text
-from drivers.report.tables import CAUTION, findings_table, percent, plain_table
+from drivers.report.tables import CAUTION, findings_table, percent, plain_table, slip_tables
 from drivers.studies.compare import Comparison
+from drivers.studies.slips import Slip
 from matlib.admissibility import check_card
 from matlib.card import Card, read_card
 from matlib.card_conversion import convert_card
@@ -63,7 +64,9 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
     write_atomically(folder / "check.json", json_text(checks_data([(laboratory, findings)])))
     _convert(laboratory, folder)
     _drive(laboratory, folder)
-    comparisons = [(case, _compare(laboratory, folder, case)) for case in CASES]
+    results = [(case, *_compare(laboratory, folder, case)) for case in CASES]
+    comparisons = [(case, comparison) for case, comparison, _ in results]
+    slips = [slip for _, _, found in results for slip in found[:1]]
     tables: list[RenderableType] = [
         Text("1. Is the laboratory's card sane?  cardproof check", style="bold"),
         *findings_table(laboratory, findings),
@@ -73,6 +76,8 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
             "   Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"
         ),
         _verdicts(comparisons, laboratory),
+        Text("\n3. Which mistake explains the difference?", style="bold"),
+        *slip_tables(slips),
         Text(f"\nCards, path, history.csv, pictures and results in JSON are in {folder}. The case is invented."),
         Text(CAUTION, style="italic"),
     ]
@@ -110,15 +115,17 @@ def _drive(laboratory: Card, folder: Path) -> None:
     save_figure(drive_figure(history, laboratory, path), str(folder / "thermal-cycles.png"))
 
 
-def _compare(laboratory: Card, folder: Path, case: _Case) -> Comparison:
+def _compare(laboratory: Card, folder: Path, case: _Case) -> tuple[Comparison, tuple[Slip, ...]]:
     from drivers.report.plots import comparison_figure
 
     other = read_card(folder / case.file)
-    comparison = compare_cards(laboratory, other, [], TOLERANCE)
+    paths, window = what_to_compare(laboratory, other, [])
+    comparison = compare_cards(laboratory, other, paths, window, TOLERANCE)
+    slips = likely_slips(laboratory, other, paths, window, comparison)
     stem = case.file.partition(".")[0]
-    write_atomically(folder / f"compare-{stem}.json", json_text(comparison_data(comparison, laboratory, other)))
+    write_atomically(folder / f"compare-{stem}.json", json_text(comparison_data(comparison, laboratory, other, slips)))
     save_figure(comparison_figure(comparison, laboratory, other), str(folder / f"compare-{stem}.png"))
-    return comparison
+    return comparison, slips
 
 
 def _verdicts(comparisons: list[tuple[_Case, Comparison]], laboratory: Card) -> RenderableType:

@@ -11,6 +11,7 @@ from drivers.history import History
 from drivers.path import Path
 from drivers.reference import Reference
 from drivers.studies.compare import Comparison, PathComparison
+from drivers.studies.slips import Slip
 from drivers.studies.trial import Rule
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
@@ -117,8 +118,19 @@ def place_data(at: Where) -> dict[str, Any]:
     return {"segment": at.segment, "time": at.time, "temperature": at.temperature}
 
 
-def comparison_data(comparison: Comparison, a: Card, b: Card) -> dict[str, Any]:
-    """Verdict of a comparison of two cards."""
+def slip_data(slip: Slip) -> dict[str, Any]:
+    """One explanation of a difference."""
+    return {
+        "id": slip.id,
+        "ids": list(slip.ids),
+        "explanation": slip.explanation,
+        "remaining": slip.remaining,
+        "twins": list(slip.twins),
+    }
+
+
+def comparison_data(comparison: Comparison, a: Card, b: Card, slips: Sequence[Slip] = ()) -> dict[str, Any]:
+    """Verdict of a comparison of two cards, and the slips that explain a difference."""
     shift = comparison.shift
     return envelope(
         "compare",
@@ -132,4 +144,5 @@ def comparison_data(comparison: Comparison, a: Card, b: Card) -> dict[str, Any]:
             "reason": shift.reason,
         },
         paths=[_path_data(result) for result in comparison.paths],
+        slips=[slip_data(slip) for slip in slips],
     )

@@ -11,6 +11,7 @@ from rich.text import Text
 from drivers.difference import Where
 from drivers.history import History
 from drivers.studies.compare import Comparison, PathComparison
+from drivers.studies.slips import Slip
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
@@ -26,6 +27,7 @@ __all__ = [
     "percent",
     "place_text",
     "plain_table",
+    "slip_tables",
     "temperature_text",
     "time_text",
     "verdict_line",
@@ -33,6 +35,7 @@ __all__ = [
 
 CAUTION = "This checks a card at one material point, not a part; qualification, tests and licensed practice decide."
 
+SLIPS_SHOWN = 4
 ROWS_SHOWN = 24
 STYLES = {"error": "bold red", "warning": "yellow", "note": "cyan"}
 
@@ -154,6 +157,18 @@ def comparison_tables(comparison: Comparison, a: Card, b: Card) -> list[Renderab
         *([Text(_bound_text(comparison))] if comparison.same != "identical" else []),
         _paths_table(_worst_first(comparison.paths), a),
     ]
+
+
+def slip_tables(slips: Sequence[Slip]) -> list[RenderableType]:
+    """The likely slips, the best explanation first."""
+    lines: list[RenderableType] = []
+    for slip in slips[:SLIPS_SHOWN]:
+        left = f"Without it {percent(slip.remaining)} of the peak is left."
+        if slip.remaining <= 1e-9:
+            left = "Without it nothing but rounding is left."
+        twins = f" The evidence cannot tell it from {', '.join(slip.twins)}." if slip.twins else ""
+        lines.append(Text.assemble((f"Likely slip: {slip.id}. ", "bold"), f"{slip.explanation} {left}{twins}"))
+    return lines
 
 
 def _same_text(comparison: Comparison, worst: PathComparison) -> str:
