@@ -210,6 +210,11 @@ class Path:
         return sum(times * segment.increment_count for times, segment in self._counted())
 
     @property
+    def segment_count(self) -> int:
+        """Segments of the whole run, cycles counted."""
+        return sum(times for times, _ in self._counted())
+
+    @property
     def duration(self) -> float:
         """Length of the whole run [s], cycles counted."""
         return math.fsum(times * segment.duration for times, segment in self._counted())

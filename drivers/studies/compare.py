@@ -29,6 +29,11 @@ ROWS = 48
 """Rows of each straight segment on which two responses are held against each other, whatever the path's own increments."""
 
 MOST_ROWS = 20_000
+"""Rows of a path with many segments, but for at least 4 of each segment."""
+
+LARGEST_RUN = 200_000
+"""Rows of a path at most: a few minutes."""
+
 TIGHTER, TIGHTEST = 0.02, 1e-10
 
 
@@ -116,7 +121,7 @@ class Comparison:
 
 def _conditioning(law: ShiftLaw, T_low: float, T_high: float) -> float:
     r"""How much a rounding of temperatures and constants is magnified in :math:`\ln a_T`."""
-    T = np.linspace(T_low, T_high, 65) if T_high > T_low else np.array([T_low])
+    T = np.unique(np.linspace(T_low, T_high, 65))  # fewer, where the ends are nearly equal
     ln_a = law.ln_shift(T)
     slope = np.abs(np.gradient(ln_a, T)) if T.size > 1 else np.zeros(1)
     return float((np.abs(ln_a) + T * slope).max())
@@ -151,10 +156,19 @@ def rounding_bound(material: Material, path: Path, history: History) -> float:
     return 4.0 * EPS * (path.increment_count + 8.0 * cond) * magnified
 
 
+def _common(path: Path) -> Path:
+    """The path with the increments on which two responses are held against each other."""
+    rows = min(ROWS, max(4, MOST_ROWS // path.segment_count))
+    common = path.with_increments(tuple(rows if s.durations.size == 1 else 1 for s in path.segments))
+    if common.increment_count > LARGEST_RUN:
+        expected = f"at most {LARGEST_RUN} rows long, {rows} a straight segment, repeats counted"
+        raise ParameterError(f"path {path.name!r}", expected, common.increment_count)
+    return common
+
+
 def _compare_path(a: Material, b: Material, path: Path, tolerance: float) -> PathComparison:
     """Rounding first, by the same increments on both; what is not rounding is judged on the reference solutions."""
-    rows = min(ROWS, max(4, MOST_ROWS // max(1, sum(1 for _ in path.unrolled()))))
-    common = path.with_increments(tuple(rows if s.durations.size == 1 else 1 for s in path.segments))
+    common = _common(path)
     responses: list[History | None] = []
     reasons = []
     for which, material in (("first", a), ("second", b)):
