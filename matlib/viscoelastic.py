@@ -117,11 +117,15 @@ class LinearViscoelastic(BlockRoutine):
         Raises
         ------
         ParameterError
-            If an array has a shape that does not belong to the block or the material, a duration is negative or not
-            finite, or a stress is to be followed where the recursion leaves no stiffness: a liquid, midpoint, and an
-            increment of very many relaxation times.
+            If an array has a shape that does not belong to the block or the material, or a duration is negative or not
+            finite.
         ShiftRangeError
             If the shift law has no answer at a temperature of the block.
+
+        Notes
+        -----
+        Where a recursion leaves no stiffness (a liquid, midpoint, an increment of very many relaxation times) and a
+        stress is to be followed all the same, the response is not finite.
         """
         from matlib.kernels import run_block
 
@@ -135,10 +139,6 @@ class LinearViscoelastic(BlockRoutine):
         dxi = self.reduced_time(block.duration, T[:-1], T[1:])
         shear_decay, shear_gain = self._weights(shear, dxi)
         bulk_decay, bulk_gain = self._weights(bulk, dxi)
-        if block.stress_controlled.any():
-            _require_stiffness(block, shear.equilibrium + shear_gain @ shear.moduli)
-        if block.stress_controlled[:3].all():
-            _require_stiffness(block, bulk.equilibrium + bulk_gain @ bulk.moduli)
         strain_end, theta, p = strain.copy(), memory[:1].copy(), memory[1 : 1 + bulk.times.size].copy()
         h = memory[1 + bulk.times.size :].reshape(6, -1).copy()
         strain_out, stress_out = np.empty_like(block.targets), np.empty_like(block.targets)
@@ -168,15 +168,3 @@ def _require_shape(name: str, array: npt.NDArray[np.generic], shape: tuple[int, 
     """The kernel checks no bounds, so its caller does."""
     if array.shape != shape:
         raise ParameterError(name, f"of shape {shape}", array.shape)
-
-
-def _require_stiffness(block: Block, modulus: FloatArray) -> None:
-    """No strain leads to a stress where nothing resists."""
-    soft = np.flatnonzero(~(modulus > 0.0))
-    if soft.size:
-        raise ParameterError(
-            "duration",
-            "short enough that the recursion leaves a stiffness, where a component follows a stress",
-            f"{float(block.duration[soft[0]]):g} s from {float(block.time[soft[0]]):g} s on",
-            "take smaller increments, or the exponential recursion",
-        )

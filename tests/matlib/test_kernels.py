@@ -193,16 +193,21 @@ def test_times_and_temperatures_that_cannot_be_are_refused(resin):
 
 
 @pytest.mark.parametrize("liquid", ["shear", "bulk"])
-def test_a_stress_is_not_followed_where_a_recursion_leaves_no_stiffness(liquid):
+def test_a_liquid_follows_a_stress_however_long_the_increment(liquid):
     flows = PronySeries(equilibrium=0.0, moduli=np.array([1e6]), times=np.array([1.0]))
     parts = {"shear": PronySeries.elastic(1e6), "bulk": PronySeries.elastic(1e6)} | {liquid: flows}
-    material = Material(shift=NoShift(), **parts)
+    routine = LinearViscoelastic(material=Material(shift=NoShift(), **parts))
     block = block_of([1.0, 1e5], [300.0] * 3, np.full((2, 6), 10.0), [True] * 6)
+    assert_equal_one_by_one(routine, block, np.zeros(6), np.zeros(routine.memory_size))
+
+
+@pytest.mark.skipif(not JIT, reason="plain Python warns of the division")
+def test_a_stress_that_nothing_resists_gives_no_number_that_could_be_mistaken_for_one():
+    flows = PronySeries(equilibrium=0.0, moduli=np.array([1e6]), times=np.array([1.0]))
+    material = Material(shear=flows, bulk=PronySeries.elastic(1e6), shift=NoShift())
     midpoint = LinearViscoelastic(material=material, recursion=RECURSIONS["midpoint"])
-    with pytest.raises(ParameterError, match=r"`duration` must be short enough .* \(got 100000 s from 1 s on\)"):
-        midpoint.run(block, np.zeros(6), np.zeros(midpoint.memory_size))
-    exponential = LinearViscoelastic(material=material)
-    assert_equal_one_by_one(exponential, block, np.zeros(6), np.zeros(exponential.memory_size))
+    block = block_of([1e5], [300.0] * 2, np.full((1, 6), 10.0), [True] * 6)
+    assert not np.isfinite(midpoint.run(block, np.zeros(6), np.zeros(midpoint.memory_size)).strain).any()
 
 
 @pytest.mark.skipif(not JIT, reason="this is the plain run")
@@ -217,4 +222,4 @@ def test_the_kernel_is_right_as_plain_python_too():
         timeout=300,
     )
     assert run.returncode == 0, run.stdout
-    assert "1 skipped" in run.stdout
+    assert "2 skipped" in run.stdout
