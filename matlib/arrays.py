@@ -6,17 +6,17 @@ import math
 from collections.abc import Iterable
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike, NDArray
 
 from matlib.errors import ParameterError
 
 __all__ = ["BoolArray", "FloatArray", "frozen", "require_finite", "require_positive"]
 
-FloatArray = npt.NDArray[np.float64]
-BoolArray = npt.NDArray[np.bool_]
+FloatArray = NDArray[np.float64]
+BoolArray = NDArray[np.bool_]
 
 
-def frozen(values: npt.ArrayLike | Iterable[float]) -> FloatArray:
+def frozen(values: ArrayLike | Iterable[float]) -> FloatArray:
     """Copy into a read-only, C-contiguous float64 array.
 
     Examples

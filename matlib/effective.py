@@ -17,7 +17,7 @@ from dataclasses import dataclass
 from typing import NamedTuple
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, frozen, require_positive
 from matlib.elastic import require_poisson_ratio
@@ -183,7 +183,7 @@ class PoissonSeries:
         object.__setattr__(self, "amplitudes", frozen(self.amplitudes))
         object.__setattr__(self, "times", frozen(self.times))
 
-    def at(self, xi: npt.ArrayLike) -> FloatArray:
+    def at(self, xi: ArrayLike) -> FloatArray:
         """Poisson ratio at reduced time `xi` [s], ``>= 0``, after a step of strain; of the shape of `xi`."""
         return np.asarray(np.exp(-ratios("xi", xi, self.times)) @ self.amplitudes + self.long_term)
 

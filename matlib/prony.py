@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from typing import Self
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike, NDArray
 
 from matlib.arrays import FloatArray, frozen, require_positive
 from matlib.errors import ParameterError
@@ -63,7 +63,7 @@ class PronySeries:
         require_positive("instantaneous modulus", self.instantaneous, "Pa")
 
     @classmethod
-    def from_fractions(cls, instantaneous: float, fractions: npt.ArrayLike, times: npt.ArrayLike) -> Self:
+    def from_fractions(cls, instantaneous: float, fractions: ArrayLike, times: ArrayLike) -> Self:
         """Make a series from fractions of the instantaneous modulus.
 
         Parameters
@@ -97,7 +97,7 @@ class PronySeries:
         return cls(equilibrium=equilibrium, moduli=modulus * shares, times=ordered)
 
     @classmethod
-    def from_long_term(cls, equilibrium: float, fractions: npt.ArrayLike, times: npt.ArrayLike) -> Self:
+    def from_long_term(cls, equilibrium: float, fractions: ArrayLike, times: ArrayLike) -> Self:
         """Make a series from fractions of the long-term modulus; their sum may be any size.
 
         Parameters
@@ -138,7 +138,7 @@ class PronySeries:
         r"""Zero-shear viscosity :math:`\sum_i M_i \tau_i` of a liquid [Pa s]; None for a solid."""
         return math.fsum(self.moduli * self.times) if self.equilibrium == 0.0 else None
 
-    def relaxation(self, xi: npt.ArrayLike) -> FloatArray:
+    def relaxation(self, xi: ArrayLike) -> FloatArray:
         """Relaxation modulus.
 
         Parameters
@@ -154,7 +154,7 @@ class PronySeries:
         decay = np.exp(-ratios("xi", xi, self.times))
         return np.asarray(decay @ self.moduli + self.equilibrium)
 
-    def storage(self, omega: npt.ArrayLike) -> FloatArray:
+    def storage(self, omega: ArrayLike) -> FloatArray:
         r"""Storage modulus :math:`M_\infty + \sum_i M_i x_i^2/(1+x_i^2)`, :math:`x_i = \omega\tau_i`.
 
         Parameters
@@ -172,7 +172,7 @@ class PronySeries:
             square = small * small
             return np.asarray(np.where(fast, 1.0, square) / (1.0 + square) @ self.moduli + self.equilibrium)
 
-    def loss(self, omega: npt.ArrayLike) -> FloatArray:
+    def loss(self, omega: ArrayLike) -> FloatArray:
         r"""Loss modulus :math:`\sum_i M_i x_i/(1+x_i^2)`, :math:`x_i = \omega\tau_i`; see `storage`."""
         small, _ = _folded(omega, self.times)
         with np.errstate(under="ignore"):
@@ -254,7 +254,7 @@ class CreepSeries:
         """Compliance after a very long time [1/Pa]; None for a liquid, which flows without end."""
         return math.fsum((self.instantaneous_compliance, *self.compliances)) if self.fluidity == 0.0 else None
 
-    def creep(self, xi: npt.ArrayLike) -> FloatArray:
+    def creep(self, xi: ArrayLike) -> FloatArray:
         """Creep compliance.
 
         Parameters
@@ -301,7 +301,7 @@ class CreepSeries:
         )
 
 
-def _folded(omega: npt.ArrayLike, times: FloatArray) -> tuple[FloatArray, npt.NDArray[np.bool_]]:
+def _folded(omega: ArrayLike, times: FloatArray) -> tuple[FloatArray, NDArray[np.bool_]]:
     """The smaller of x and 1/x, and whether that is 1/x, for x = omega tau."""
     with np.errstate(over="ignore", under="ignore"):
         x = np.multiply.outer(from_zero("omega", omega), times)

@@ -6,7 +6,7 @@ from abc import ABC, abstractmethod
 from dataclasses import dataclass
 from typing import NamedTuple
 
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import BoolArray, FloatArray
 
@@ -70,7 +70,7 @@ class Routine(ABC):
     def update(self, increment: Increment, memory: FloatArray) -> Update:
         """Stress, tangent and new memory at the end of `increment`."""
 
-    def reduced_time(self, duration: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray | None:
+    def reduced_time(self, duration: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray | None:
         """Reduced time of increments [s at T_ref], by a routine that tells its clock; None from one that does not."""
         return None
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, frozen, require_finite
 from matlib.errors import ParameterError
@@ -21,7 +21,7 @@ def require_not_negative(name: str, value: float, unit: str) -> float:
     return number
 
 
-def checked_terms(name: str, weights: npt.ArrayLike, unit: str, times: npt.ArrayLike) -> tuple[FloatArray, FloatArray]:
+def checked_terms(name: str, weights: ArrayLike, unit: str, times: ArrayLike) -> tuple[FloatArray, FloatArray]:
     """Check the terms of a series and put them in ascending order of time, both read-only."""
     checked = [_positive_vector(name, weights, unit), _positive_vector("times", times, "s")]
     if checked[0].size != checked[1].size:
@@ -30,7 +30,7 @@ def checked_terms(name: str, weights: npt.ArrayLike, unit: str, times: npt.Array
     return frozen(ordered[0]), frozen(ordered[1])
 
 
-def _positive_vector(name: str, values: npt.ArrayLike, unit: str) -> FloatArray:
+def _positive_vector(name: str, values: ArrayLike, unit: str) -> FloatArray:
     vector = np.asarray(values, dtype=np.float64)
     if vector.ndim != 1:
         raise ParameterError(name, "one-dimensional", f"shape {vector.shape}")
@@ -54,7 +54,7 @@ def merged_terms(weights: FloatArray, times: FloatArray) -> tuple[FloatArray, Fl
     return np.add.reduceat(weights, starts), times[starts]
 
 
-def from_zero(name: str, values: npt.ArrayLike) -> FloatArray:
+def from_zero(name: str, values: ArrayLike) -> FloatArray:
     """Return `values` as an array, or raise `ParameterError` where one is not ``>= 0``."""
     array = np.asarray(values, dtype=np.float64)
     if not np.all(array >= 0.0):
@@ -63,7 +63,7 @@ def from_zero(name: str, values: npt.ArrayLike) -> FloatArray:
     return array
 
 
-def ratios(name: str, values: npt.ArrayLike, times: FloatArray) -> FloatArray:
+def ratios(name: str, values: ArrayLike, times: FloatArray) -> FloatArray:
     """``values/times``, shape (..., n), for values ``>= 0``; may be infinite, which decays to zero as it should."""
     with np.errstate(over="ignore", under="ignore"):
         return np.divide.outer(from_zero(name, values), times)

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike, NDArray
 
 from matlib.arrays import FloatArray, frozen
 from matlib.errors import ParameterError
@@ -65,7 +65,7 @@ class LinearViscoelastic(BlockRoutine):
         """One number for the volume strain, one a bulk term, six a shear term."""
         return 1 + self.material.bulk.times.size + 6 * self.material.shear.times.size
 
-    def reduced_time(self, duration: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def reduced_time(self, duration: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """Reduced time of increments by the shift rule of this routine [s at T_ref]."""
         return self.shift_rule(self.material.shift, duration, T_start, T_end)
 
@@ -164,7 +164,7 @@ class LinearViscoelastic(BlockRoutine):
         return BlockResponse(strain_out, stress_out, np.concatenate([theta, p, h.ravel()]))
 
 
-def _require_shape(name: str, array: npt.NDArray[np.generic], shape: tuple[int, ...]) -> None:
+def _require_shape(name: str, array: NDArray[np.generic], shape: tuple[int, ...]) -> None:
     """The kernel checks no bounds, so its caller does."""
     if array.shape != shape:
         raise ParameterError(name, f"of shape {shape}", array.shape)

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.prony import PronySeries
 from matlib.routine import Increment, Routine
@@ -14,9 +14,9 @@ from matlib.tensors import DEVIATORIC, IDENTITY
 
 def march(
     routine: Routine,
-    durations: npt.ArrayLike,
-    temperatures: npt.ArrayLike,
-    strains: npt.ArrayLike,
+    durations: ArrayLike,
+    temperatures: ArrayLike,
+    strains: ArrayLike,
     memory: np.ndarray | None = None,
 ) -> tuple[np.ndarray, np.ndarray]:
     """Stress at all increment ends, shape (n, 6), and the memory at the last.

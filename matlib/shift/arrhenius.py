@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_positive
 from matlib.shift.base import ShiftLaw
@@ -54,14 +54,14 @@ class Arrhenius(ShiftLaw):
         """Activation energy over gas constant [K]."""
         return self.activation_energy / self.gas_constant
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T)
         with np.errstate(over="ignore"):
             ln_a = self.B / self.T_ref * ((self.T_ref - T) / T)
         return check_ln_shift(self.name, T, ln_a, self.T_ref)
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end))
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)

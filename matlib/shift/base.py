@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from abc import ABC, abstractmethod
 
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray
 from matlib.shift.quadrature import mean_rate_by_quadrature
@@ -31,7 +31,7 @@ class ShiftLaw(ABC):
         """Reference temperature [K]."""
 
     @abstractmethod
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         r"""Natural logarithm of the shift factor.
 
         Parameters
@@ -60,7 +60,7 @@ class ShiftLaw(ABC):
         """Temperatures [K], ascending, between which the law is smooth and monotone."""
         return ()
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         r"""Mean of :math:`1/a_T` over a straight temperature ramp: reduced time a second of it.
 
         Parameters

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_positive
 from matlib.shift.base import ShiftLaw
@@ -81,7 +81,7 @@ class Crossover(ShiftLaw):
         lower = tuple(T for T in self.below.knots if self.at > T)
         return (*lower, self.at, *(T for T in self.above.knots if self.at < T))
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T, self.pole)
         cold = self.at > T

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray
 from matlib.errors import PoleError, ShiftRangeError
@@ -16,7 +16,7 @@ LARGEST_LN_RATE = 690.0  # exp(690) = 4e299: leaves room below the largest doubl
 _LARGEST_LN_SHIFT = 1e300  # frozen: any rate below exp(-745) is zero; a finite ln a_T keeps differences finite
 
 
-def check_temperatures(law: str, T: npt.ArrayLike, pole: float | None = None) -> FloatArray:
+def check_temperatures(law: str, T: ArrayLike, pole: float | None = None) -> FloatArray:
     """Temperatures as an array, all of them finite, above absolute zero and above the pole.
 
     Parameters
@@ -54,7 +54,7 @@ def check_temperatures(law: str, T: npt.ArrayLike, pole: float | None = None) ->
     return temperatures
 
 
-def check_ln_shift(law: str, T: FloatArray, ln_a: npt.ArrayLike, T_ref: float) -> FloatArray:
+def check_ln_shift(law: str, T: FloatArray, ln_a: ArrayLike, T_ref: float) -> FloatArray:
     r"""The values of :math:`\ln a_T`, made sure that :math:`1/a_T` can be written as a double.
 
     Parameters

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_positive
 from matlib.errors import ParameterError, ShiftRangeError
@@ -83,13 +83,13 @@ class MeasuredRange(ShiftLaw):
             return self.law.knots
         return (self.low, *(T for T in self.law.knots if self.low < T < self.high), self.high)
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T)
         self._refuse_outside(T)
         return self.law.ln_shift(np.clip(T, self.low, self.high) if self.outside == "hold" else T)
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """See `ShiftLaw.mean_rate`; as the law gives it, held parts added in their share."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end))
         hot = check_temperatures(self.name, np.maximum(T_start, T_end))

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_positive
 from matlib.shift.base import ShiftLaw
@@ -39,11 +39,11 @@ class NoShift(ShiftLaw):
         """``none``."""
         return "none"
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         return np.zeros(check_temperatures(self.name, T).shape)
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """See `ShiftLaw.mean_rate`; one."""
         check_temperatures(self.name, np.minimum(T_start, T_end))
         return np.ones(check_temperatures(self.name, np.maximum(T_start, T_end)).shape)

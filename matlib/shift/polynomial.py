@@ -6,7 +6,7 @@ import math
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, frozen, require_positive
 from matlib.errors import ParameterError
@@ -53,7 +53,7 @@ class Polynomial(ShiftLaw):
         """``polynomial``."""
         return "polynomial"
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T)
         x = T - self.T_ref

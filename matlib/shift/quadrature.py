@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike, NDArray
 
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
@@ -24,7 +24,7 @@ LnShift = Callable[[FloatArray], FloatArray]
 
 
 def mean_rate_by_quadrature(
-    ln_shift: LnShift, knots: Sequence[float], T_start: npt.ArrayLike, T_end: npt.ArrayLike
+    ln_shift: LnShift, knots: Sequence[float], T_start: ArrayLike, T_end: ArrayLike
 ) -> FloatArray:
     r"""Mean over temperature of :math:`1/a_T` for straight ramps.
 
@@ -72,7 +72,7 @@ def mean_rate_by_quadrature(
     return np.asarray(np.exp(-ln_fastest) * total).reshape(start.shape)
 
 
-def _split_at_knots(low: FloatArray, high: FloatArray, knots: FloatArray) -> tuple[npt.NDArray[np.intp], FloatArray]:
+def _split_at_knots(low: FloatArray, high: FloatArray, knots: FloatArray) -> tuple[NDArray[np.intp], FloatArray]:
     """Intervals of all ramps: the ramp that owns each, and its two ends, shape (intervals, 2)."""
     first = np.searchsorted(knots, low, side="right")
     last = np.searchsorted(knots, high, side="left")
@@ -89,14 +89,14 @@ def _adapt(
     ln_shift: LnShift,
     low: FloatArray,
     high: FloatArray,
-    owner: npt.NDArray[np.intp],
+    owner: NDArray[np.intp],
     edges: FloatArray,
     ln_edges: FloatArray,
     ln_fastest: FloatArray,
 ) -> FloatArray:
     """Mean rate of each ramp relative to its fastest."""
 
-    def estimate(owner: npt.NDArray[np.intp], left: FloatArray, right: FloatArray) -> FloatArray:
+    def estimate(owner: NDArray[np.intp], left: FloatArray, right: FloatArray) -> FloatArray:
         T = left[:, None] + (right - left)[:, None] * _NODES
         relative = np.exp(
             np.minimum(ln_fastest[owner][:, None] - ln_shift(T.ravel()).reshape(T.shape), LARGEST_LN_RATE)

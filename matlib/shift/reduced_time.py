@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError, UnknownNameError
@@ -16,11 +16,11 @@ from matlib.shift.base import ShiftLaw
 
 __all__ = ["SHIFT_RULES", "ShiftRule", "find_shift_rule"]
 
-ShiftRule = Callable[[ShiftLaw, npt.ArrayLike, npt.ArrayLike, npt.ArrayLike], FloatArray]
+ShiftRule = Callable[[ShiftLaw, ArrayLike, ArrayLike, ArrayLike], FloatArray]
 """``rule(law, dt, T_start, T_end)``: arrays that broadcast, in s and K; gives reduced time [s at ``T_ref``]."""
 
 
-def _reduced(dt: npt.ArrayLike, rate: FloatArray) -> FloatArray:
+def _reduced(dt: ArrayLike, rate: FloatArray) -> FloatArray:
     """Duration times rate, both checked: exactly 0 for ``dt = 0``, and never infinite."""
     durations = np.asarray(dt, dtype=np.float64)
     if durations.size and not (durations.min() >= 0.0 and durations.max() < np.inf):
@@ -38,32 +38,32 @@ def _reduced(dt: npt.ArrayLike, rate: FloatArray) -> FloatArray:
     return dxi
 
 
-def _rate(law: ShiftLaw, T: npt.ArrayLike) -> FloatArray:
+def _rate(law: ShiftLaw, T: ArrayLike) -> FloatArray:
     with np.errstate(under="ignore"):
         return np.exp(-law.ln_shift(T))
 
 
-def _start(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _start(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     """Rate at the start, over the whole increment; first order."""
     return _reduced(dt, _rate(law, np.broadcast_arrays(T_start, T_end)[0]))
 
 
-def _end(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _end(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     """Rate at the end, over the whole increment; first order."""
     return _reduced(dt, _rate(law, np.broadcast_arrays(T_start, T_end)[1]))
 
 
-def _middle(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _middle(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     """Rate at the mean temperature; second order."""
     return _reduced(dt, _rate(law, 0.5 * np.add(T_start, T_end)))
 
 
-def _mean_rate(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _mean_rate(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     """Average of the two end rates; second order."""
     return _reduced(dt, 0.5 * (_rate(law, T_start) + _rate(law, T_end)))
 
 
-def _mean_log(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _mean_log(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     r""":math:`\ln a_T` linear in time: the logarithmic mean of the end rates; second order.
 
     B. C. Carlson, "The logarithmic mean", Amer. Math. Monthly 79 (1972) 615-618.  (from memory)
@@ -77,7 +77,7 @@ def _mean_log(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: n
         return _reduced(dt, np.exp(-np.minimum(ln_start, ln_end)) * part)
 
 
-def _integrated(law: ShiftLaw, dt: npt.ArrayLike, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+def _integrated(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
     """The integral itself; exact for a temperature linear in time."""
     return _reduced(dt, law.mean_rate(T_start, T_end))
 

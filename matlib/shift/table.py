@@ -6,7 +6,7 @@ import math
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, frozen, require_positive
 from matlib.errors import ParameterError
@@ -82,7 +82,7 @@ class Table(ShiftLaw):
         """The temperatures of the points [K]."""
         return tuple(self.T.tolist())
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T)
         i = np.clip(np.searchsorted(self.T, T, side="right") - 1, 0, self.T.size - 2)

@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_finite, require_positive
 from matlib.errors import ParameterError
@@ -60,14 +60,14 @@ class VFT(ShiftLaw):
         """`T_inf` [K]."""
         return self.T_inf
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T, self.T_inf)
         with np.errstate(over="ignore"):
             ln_a = self.B / (self.T_ref - self.T_inf) * ((self.T_ref - T) / (T - self.T_inf))
         return check_ln_shift(self.name, T, ln_a, self.T_ref)
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end), self.T_inf)
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)

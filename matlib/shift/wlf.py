@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 from typing import Literal
 
 import numpy as np
-import numpy.typing as npt
+from numpy.typing import ArrayLike
 
 from matlib.arrays import FloatArray, require_positive
 from matlib.errors import ParameterError, PoleError
@@ -78,14 +78,14 @@ class WLF(ShiftLaw):
             raise PoleError(self.name, float(T.flat[int(np.argmin(u))]), self.pole)
         return u
 
-    def ln_shift(self, T: npt.ArrayLike) -> FloatArray:
+    def ln_shift(self, T: ArrayLike) -> FloatArray:
         """See `ShiftLaw.ln_shift`."""
         T = check_temperatures(self.name, T, self.pole)
         with np.errstate(over="ignore"):
             ln_a = self.ln_C1 * ((self.T_ref - T) / self._height(T))
         return check_ln_shift(self.name, T, ln_a, self.T_ref)
 
-    def mean_rate(self, T_start: npt.ArrayLike, T_end: npt.ArrayLike) -> FloatArray:
+    def mean_rate(self, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
         """See `ShiftLaw.mean_rate`; in closed form."""
         cold = check_temperatures(self.name, np.minimum(T_start, T_end), self.pole)
         hot = np.asarray(np.maximum(T_start, T_end), dtype=np.float64)
