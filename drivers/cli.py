@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import contextlib
 import io
+import os
 import sys
 from pathlib import Path
 from typing import Annotated
@@ -19,7 +21,6 @@ app = typer.Typer(
     rich_markup_mode=None,
     pretty_exceptions_enable=False,
     no_args_is_help=False,
-    help="Proves a linear-viscoelastic material card at one material point.",
 )
 
 CardFile = Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml.")]
@@ -90,6 +91,10 @@ def convert(
         list[str] | None,
         typer.Option("--units", metavar="UNIT", help="A unit of the new card, as in K; may be repeated."),
     ] = None,
+    fit: Annotated[
+        str | None,
+        typer.Option("--fit", metavar="METHOD", help="least-squares (default from a table's points) or minimax."),
+    ] = None,
     json: Json = None,
 ) -> None:
     """Write a card with another shift law, reference temperature or unit.
@@ -108,6 +113,7 @@ def convert(
             points=points,
             base=base,
             units=units or [],
+            fit=fit,
             json_file=json,
         )
     )
@@ -238,9 +244,16 @@ def main(arguments: list[str] | None = None) -> int:
     except SystemExit:  # never for the usage, which is an exception here: what is below us leaves so on a broken pipe
         return 141
     except OSError as error:
+        _silence()
         return _refused([f"cardproof: standard output: {error.strerror or error}"])
     except MemoryError:
         return _refused(["cardproof: not enough memory; keep fewer rows, or use fewer increments"])
+
+
+def _silence() -> None:
+    """Send what is left for standard output nowhere, lest the interpreter fail on it once more on its way out."""
+    with contextlib.suppress(OSError, ValueError), open(os.devnull, "w") as nowhere:
+        os.dup2(nowhere.fileno(), sys.stdout.fileno())
 
 
 def _refused(lines: list[str], status: int = 2) -> int:
