@@ -99,9 +99,6 @@ def pole_findings(card: Card, material: Material) -> list[Finding]:
     if pole is None or window is None:
         return []
     name, low = _unwrapped(material.shift).name, window[0]
-    held = isinstance(material.shift, MeasuredRange) and material.shift.outside == "hold"
-    if held and isinstance(material.shift, MeasuredRange) and material.shift.low > pole:
-        return []
     if pole >= low:
         message = (
             f"{name}: the pole T_inf = {both_scales(pole)} lies {pole - low:.4g} K above the lowest service "

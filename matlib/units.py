@@ -159,4 +159,3 @@ def parse_temperature(text: str, default: Unit) -> float:
     if not 0.0 < T < 1e6:
         raise ParameterError("temperature", "above absolute zero and below 1e6 K", f"{text!r} = {T:g} K")
     return T
-

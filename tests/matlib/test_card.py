@@ -246,6 +246,13 @@ def test_everything_that_keeps_a_card_from_being_a_material_is_said_at_once(tmp_
     assert {fault.key for fault in caught.value.faults} == {"elastic.nu", "prony.bulk", "shift.C2"}
 
 
+def test_moduli_are_not_compared_with_elastic_constants_that_are_none(tmp_path):
+    prony = {"relative_to": "absolute", "shear": [[1.0, 1e9]]}
+    with pytest.raises(FileError) as caught:
+        read(tmp_path, changed({"elastic.nu": 0.7, "prony": prony})).material()
+    assert [fault.key for fault in caught.value.faults] == ["elastic.nu"]
+
+
 def test_a_crossover_whose_laws_do_not_reach_each_other_is_no_material(tmp_path):
     wlf = {"law": "wlf", "T_ref": 80.0, "C1": 10.0, "C2": 30.0}  # its pole lies at 50 degC
     card = read(tmp_path, changed({"shift": {"law": "crossover", "at": 40.0, "below": wlf, "above": wlf}}))

@@ -127,6 +127,7 @@ def test_a_temperature_that_cannot_be_is_refused(text):
         parse_temperature(text, TEMPERATURE["K"])
 
 
-def test_every_unit_is_filed_under_its_own_name():
-    for table in QUANTITIES.values():
+def test_every_unit_is_found_under_its_own_name():
+    for quantity, table in QUANTITIES.items():
+        assert all(find_unit(quantity, name) is unit for name, unit in table.items())
         assert all(name == unit.name and math.isfinite(unit.scale) and unit.scale > 0.0 for name, unit in table.items())
