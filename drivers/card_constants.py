@@ -49,11 +49,18 @@ class Constant:
                 return units.stress
             case "time":
                 return units.time
-            case "temperature" | "difference":
+            case "temperature":
                 return units.temperature
+            case "difference":
+                return _degree(card)
             case "per temperature":
-                return f"1/{units.temperature}" + (f"^{self.power}" if self.power > 1 else "")
+                return f"1/{_degree(card)}" + (f"^{self.power}" if self.power > 1 else "")
         return ""
+
+
+def _degree(card: Card) -> str:
+    """Unit of temperature differences: a kelvin, unless degrees are Fahrenheit's."""
+    return "degF" if card.document.units.temperature == "degF" else "K"
 
 
 def constants(card: Card) -> dict[str, Constant]:

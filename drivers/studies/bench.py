@@ -46,16 +46,18 @@ class Bench:
     Parameters
     ----------
     paths : sequence of RecordedPath
+    finer : int, optional
+        Increments between neighbouring probe points.
 
     Notes
     -----
-    Runs use the built-in update with the same increments, a few times finer than the probe points. What the increments do to
+    Runs use the built-in update with the same increments for all. What the increments do to
     one run they do to the other, so that a difference of two runs is far more accurate than either.
     """
 
-    def __init__(self, paths: Sequence[RecordedPath]) -> None:
+    def __init__(self, paths: Sequence[RecordedPath], *, finer: int = FINER) -> None:
         self.paths = tuple(paths)
-        self._finer = tuple(_finer(recorded) for recorded in paths)
+        self._runs = tuple(_finer(recorded, finer) for recorded in paths)
 
     @property
     def temperatures(self) -> tuple[float, float]:
@@ -67,7 +69,7 @@ class Bench:
         """Response to every path; None where there is none."""
         routine = LinearViscoelastic(material=material)
         responses: list[History | None] = []
-        for path in self._finer:
+        for path in self._runs:
             try:
                 responses.append(drive(routine, path))
             except (CardproofError, ArithmeticError):
@@ -96,9 +98,9 @@ class Bench:
         return self.change(reference, self.run(material))
 
 
-def _finer(recorded: RecordedPath) -> Path:
+def _finer(recorded: RecordedPath, finer: int) -> Path:
     counts = tuple(
-        FINER * count if segment.durations.size == 1 else count
+        finer * count if segment.durations.size == 1 else count
         for segment, count in zip(recorded.path.segments, recorded.increments, strict=True)
     )
     return recorded.path.with_increments(counts)

@@ -11,7 +11,8 @@ from drivers.history import History
 from drivers.studies.bench import Bench, Change
 from drivers.studies.parts import ELASTIC, EXPANSION, FRACTIONS, SHIFT, TERMS, TIMES
 from drivers.studies.trading import that_matter, traded
-from matlib.card import Card
+from matlib.card import Card, parse_card
+from matlib.card_conversion import convert_card
 from matlib.errors import CardproofError
 
 __all__ = ["ConstantChange", "constant_changes"]
@@ -53,6 +54,18 @@ class ConstantChange:
     together: tuple[str, ...] = ()
 
 
+def _in_form_of(recorded: Card, now: Card) -> Card:
+    """The recorded card with its law in the new card's form, where one is the other exactly: then their constants compare."""
+    old, new = (card.law_table.model_dump() for card in (recorded, now))
+    if old["law"] == new["law"] and old.get("base") == new.get("base"):
+        return recorded
+    try:
+        converted = convert_card(recorded, new["law"], base=new.get("base"))
+    except CardproofError:
+        return recorded
+    return parse_card(converted.tables, recorded.file) if converted.conversion.exact else recorded
+
+
 def _part_of(key: str) -> tuple[str, ...]:
     """Parts that a constant belongs to."""
     if key.startswith("shift."):
@@ -67,7 +80,21 @@ def _part_of(key: str) -> tuple[str, ...]:
 def constant_changes(
     recorded: Card, now: Card, part: str, bench: Bench, before: Responses, matters: bool
 ) -> tuple[ConstantChange, ...]:
-    """Constants of a part that differ, each with its own effect where it can be put into the recorded card alone."""
+    """Constants of a part that differ, each with its own effect where it can be put into the recorded card alone.
+
+    Parameters
+    ----------
+    recorded, now : Card
+    part : str
+        One of `parts.PARTS`.
+    bench : Bench
+    before : tuple of History or None
+        Responses of the recorded card on the bench.
+    matters : bool
+        Whether the part matters as a whole.
+    """
+    if part == SHIFT:
+        recorded = _in_form_of(recorded, now)
     changes = _changed(recorded, now, part)
     keys = [change.key for change in changes if change.was is not None and change.now is not None]
     if not keys or len(keys) > MOST_CONSTANTS or not _comparable(recorded, now, part):
