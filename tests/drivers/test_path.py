@@ -202,7 +202,9 @@ def test_a_block_moves_straight_from_where_it_starts_to_its_targets():
     assert block.temperature[-1] == 350.0
 
 
-@given(start=st.floats(0.0, 1e9), durations=st.lists(st.floats(0.0, 1e3), min_size=1, max_size=4), n=st.integers(1, 300))
+@given(
+    start=st.floats(0.0, 1e9), durations=st.lists(st.floats(0.0, 1e3), min_size=1, max_size=4), n=st.integers(1, 300)
+)
 def test_time_never_runs_backwards_and_ends_where_it_should(start, durations, n):
     count = len(durations)
     segment = pull(durations=durations, targets=np.zeros((count, 6)), increments=n, spacing="log")
