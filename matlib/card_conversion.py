@@ -9,7 +9,7 @@ from typing import Any, Literal
 
 from matlib.card import Card, parse_card, plain
 from matlib.errors import ConversionError, FileError
-from matlib.shift.conversion import Conversion, convert_law
+from matlib.shift.conversion import Conversion, FitMethod, convert_law, fits_points
 from matlib.shift_tables import written_shift
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
@@ -57,6 +57,7 @@ def convert_card(
     points: int | None = None,
     base: Literal[10, "e"] | None = None,
     units: tuple[Unit, ...] = (),
+    fit: FitMethod | None = None,
 ) -> ConvertedCard:
     """Write a card with another shift law, about another reference temperature, in other units.
 
@@ -69,13 +70,16 @@ def convert_card(
     T_ref : float, optional
         New reference temperature [K]; relaxation times move along.
     T_range : tuple of float, optional
-        Temperatures that an inexact conversion is made for [K]; else the measured range, else the service window.
+        Temperatures that an inexact conversion is made for [K]; else the measured range, else the service window (a
+        least-squares fit takes all points of the table).
     points : int, optional
         Temperatures of a table.
     base : {10, "e"}, optional
         Logarithm that WLF constants are written for.
     units : tuple of Unit, optional
         Units of the new card that differ from the old.
+    fit : {"least-squares", "minimax"}, optional
+        How constants are found where no exact ones exist: see `convert_law`.
 
     Returns
     -------
@@ -89,9 +93,9 @@ def convert_card(
         If there is no such conversion, it needs a range, or the new card would have numbers that no card may have.
     """
     law = card.material().shift
-    if T_range is None and card.limits.measured is None:
+    if T_range is None and card.limits.measured is None and not fits_points(law, to, fit):
         T_range = card.service_temperature
-    conversion = convert_law(law, to, T_ref=T_ref, T_range=T_range, points=points, base=base)
+    conversion = convert_law(law, to, T_ref=T_ref, T_range=T_range, points=points, base=base, fit=fit)
     names = _new_units(card, units)
     tables = _in_units(plain(card.document), card, names, conversion.time_factor)
     temperature = TEMPERATURE[names["temperature"]]
@@ -184,13 +188,14 @@ def _origin(card: Card, conversion: Conversion, temperature: Unit) -> dict[str, 
         "exact": conversion.exact,
     }
     if not conversion.exact:
+        origin["method"] = conversion.method
         origin["largest_error_decades"] = conversion.largest_error_decades
         if conversion.error_at is not None:
             origin["error_at"] = _rounded(temperature.from_si(conversion.error_at), temperature)
         if conversion.fitted_range is not None:
             origin["range"] = [_rounded(temperature.from_si(T), temperature) for T in conversion.fitted_range]
-    if conversion.note:
-        origin["note"] = conversion.note
+    if conversion.note or conversion.support:
+        origin["note"] = ". ".join(text for text in (conversion.note, conversion.support) if text)
     return origin
 
 

@@ -88,6 +88,7 @@ class MadeFromTable(Document):
     revision: str = ""
     law: str
     exact: bool
+    method: Literal["", "least-squares", "minimax", "sampled"] = ""
     largest_error_decades: Number | None = None
     error_at: Number | None = None
     range: Pair | None = None

@@ -7,12 +7,13 @@ from typing import Literal
 
 from drivers.commands.output import deliver, require_folder
 from drivers.report.data import conversion_data
+from drivers.report.fit import fit_data, fit_tables
 from drivers.report.tables import conversion_tables
 from matlib.card import read_card
 from matlib.card_conversion import convert_card
 from matlib.documents import write_atomically
 from matlib.errors import ParameterError, UnknownNameError
-from matlib.shift.conversion import TARGETS
+from matlib.shift.conversion import TARGETS, FitMethod
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit, parse_temperature
 
 __all__ = ["run"]
@@ -30,6 +31,7 @@ def run(
     points: int | None = None,
     base: str | None = None,
     units: Sequence[str] = (),
+    fit: str | None = None,
     json_file: str | None = None,
 ) -> int:
     """Convert a card and write the new one."""
@@ -50,9 +52,11 @@ def run(
         points=points,
         base=_parse_base(base),
         units=tuple(_find_any_unit(name) for name in units),
+        fit=_parse_fit(fit),
     )
     write_atomically(output, converted.text())
-    return deliver(conversion_data(converted, output), conversion_tables(converted, output, unit), json_file)
+    tables = [*conversion_tables(converted, output, unit), *fit_tables(converted)]
+    return deliver(conversion_data(converted, output) | {"fit": fit_data(converted)}, tables, json_file)
 
 
 def _parse_base(text: str | None) -> Literal[10, "e"] | None:
@@ -61,6 +65,15 @@ def _parse_base(text: str | None) -> Literal[10, "e"] | None:
     if text not in ("10", "e"):
         raise ParameterError("--base", "10 or e", repr(text))
     return 10 if text == "10" else "e"
+
+
+def _parse_fit(text: str | None) -> FitMethod | None:
+    match text:
+        case None:
+            return None
+        case "least-squares" | "minimax":
+            return text
+    raise UnknownNameError("method for --fit", text, ("least-squares", "minimax"))
 
 
 def _find_any_unit(name: str) -> Unit:

@@ -1,4 +1,4 @@
-"""One shift law written as another: exactly where that can be, as a minimax fit with its error elsewhere."""
+"""One shift law written as another: exactly where that can be, as a fit with its largest error elsewhere."""
 
 from __future__ import annotations
 
@@ -14,19 +14,23 @@ from matlib.shift.arrhenius import Arrhenius
 from matlib.shift.base import ShiftLaw
 from matlib.shift.difference import chebyshev_temperatures, largest_difference_decades, largest_value
 from matlib.shift.family import VftConstants, as_vft
+from matlib.shift.family_constants import Style
+from matlib.shift.fit import FORMS, ShiftFit
 from matlib.shift.measured import MeasuredRange
 from matlib.shift.minimax import LOWEST_POLE, best_amplitude, best_pole, family_function
 from matlib.shift.reference import move_reference, time_factor
 from matlib.shift.table import Table
+from matlib.shift.table_conversion import fit_points
 from matlib.shift.vft import VFT
 from matlib.shift.wlf import WLF
 from matlib.units import GAS_CONSTANT
 
-__all__ = ["TARGETS", "Conversion", "convert_law", "largest_difference_decades"]
+__all__ = ["TARGETS", "Conversion", "FitMethod", "convert_law", "fits_points", "largest_difference_decades"]
 
 TARGETS = ("wlf", "vft", "arrhenius", "table")
 _ZERO_POLE = 1e-10  # K: a pole this near 0 K changes ln a_T by T_inf (1/T + 1/T_ref) of itself, below 1e-12 above 200 K
 Base = Literal[10, "e"]
+FitMethod = Literal["least-squares", "minimax"]
 _COARSE, _FINE = 400, 4000
 _POINTS = 25
 
@@ -51,6 +55,12 @@ class Conversion:
         The temperatures [K] that the new law was made for; None where exact.
     note : str
         What a reader of the new card should know besides.
+    method : str
+        How an inexact law was found: ``least-squares``, ``minimax`` or ``sampled``; empty where exact.
+    fit : ShiftFit, optional
+        Constants with their standard errors, of a least-squares fit to the points of a table.
+    support : str
+        Which form those points support, in a sentence.
     """
 
     law: ShiftLaw
@@ -60,6 +70,9 @@ class Conversion:
     error_at: float | None = None
     fitted_range: tuple[float, float] | None = None
     note: str = ""
+    method: str = ""
+    fit: ShiftFit | None = None
+    support: str = ""
 
 
 class _Style(NamedTuple):
@@ -82,6 +95,7 @@ def convert_law(
     T_range: tuple[float, float] | None = None,
     points: int | None = None,
     gas_constant: float | None = None,
+    fit: FitMethod | None = None,
 ) -> Conversion:
     r"""Write a shift law in another form, about another reference temperature, or both.
 
@@ -102,6 +116,9 @@ def convert_law(
         Number of temperatures that a table samples, 2 or more; 25 if left out. The reference is one more.
     gas_constant : float, optional
         [J/(mol K)] that a new activation energy is written with; that of the old one, or CODATA's, if left out.
+    fit : {"least-squares", "minimax"}, optional
+        How constants are found where no exact ones exist. If left out, least squares on the points of a table (those
+        within `T_range`, which may be left out), minimax for any other law.
 
     Returns
     -------
@@ -110,14 +127,15 @@ def convert_law(
     Raises
     ------
     ConversionError
-        If there is no such conversion, or it needs `T_range` and has none.
+        If there is no such conversion, it needs `T_range` and has none, or least squares has no or too few points.
     ShiftRangeError
         If `law` has no answer at the new reference or in `T_range`; `PoleError` at its pole.
 
     Notes
     -----
     Exact: a moved reference, WLF and VFT into each other, Arrhenius into either, and either into Arrhenius where the
-    pole is at 0 K. Else the largest error of :math:`\log_{10} a_T` is made least, with :math:`a_T(T_{ref}) = 1` kept.
+    pole is at 0 K. Else the largest error of :math:`\log_{10} a_T` is made least, with :math:`a_T(T_{ref}) = 1` kept; or
+    the sum of squares at the points of a table, see `fit_table`.
 
     Examples
     --------
@@ -128,27 +146,31 @@ def convert_law(
     if isinstance(law, MeasuredRange):
         span = _measured_part(law, T_range)
         result = convert_law(
-            law.law, to, T_ref=T_ref, base=base, T_range=span, points=points, gas_constant=gas_constant
+            law.law, to, T_ref=T_ref, base=base, T_range=span, points=points, gas_constant=gas_constant, fit=fit
         )
         return replace(result, law=replace(law, law=result.law))
     T_new = law.T_ref if T_ref is None else require_positive("T_ref", T_ref, "K")
-    factor = time_factor(law, T_new)
     if to not in TARGETS and to != law.name:
         raise ConversionError(f"a shift law {law.name} cannot be written as {to!r}: use one of {', '.join(TARGETS)}")
     style = _Style(
         base=base or (law.base if isinstance(law, WLF) else 10),
         gas_constant=gas_constant or (law.gas_constant if isinstance(law, Arrhenius) else GAS_CONSTANT),
     )
+    if isinstance(law, Table) and fits_points(law, to, fit):
+        return _by_least_squares(law, to, T_range, Style(T_new, style.base, style.gas_constant))
+    factor = time_factor(law, T_new)
     constants = as_vft(law)
     if constants is not None and (to in ("wlf", "vft") or (to == "arrhenius" and abs(constants.T_inf) <= _ZERO_POLE)):
         return Conversion(law=_exactly(law, constants, to, T_new, style), time_factor=factor, exact=True)
     if to == law.name and not (to == "table" and points is not None):
         return Conversion(law=move_reference(law, T_new), time_factor=factor, exact=True)
+    if fit == "least-squares" and to != "table":
+        raise ConversionError(f"least squares needs the points of a table, and shift law {law.name} has none")
     low, high = _checked_range(law, to, T_range)
     made, note = (
         (_sampled(law, T_new, low, high, points), "") if to == "table" else _fitted(law, to, T_new, low, high, style)
     )
-    error, at = _largest_error(law, made, T_new, low, high)
+    error, at = _largest_error(law, made, float(law.ln_shift(T_new)), low, high)
     return Conversion(
         law=made,
         time_factor=factor,
@@ -157,6 +179,33 @@ def convert_law(
         error_at=at,
         fitted_range=(low, high),
         note=note,
+        method="sampled" if to == "table" else "minimax",
+    )
+
+
+def fits_points(law: ShiftLaw, to: str, fit: FitMethod | None) -> bool:
+    """Whether a conversion is least squares on the points of a table, and so needs no range."""
+    inner = law.law if isinstance(law, MeasuredRange) else law
+    return isinstance(inner, Table) and to in FORMS and fit != "minimax"
+
+
+def _by_least_squares(law: Table, to: str, T_range: tuple[float, float] | None, style: Style) -> Conversion:
+    if T_range is not None:
+        T_range = _checked_range(law, to, T_range)
+    found = fit_points(law, to, T_range, style)
+    ln_factor = found.fit.level * math.log(10.0)
+    error, at = _largest_error(law, found.fit.law, ln_factor, found.low, found.high)
+    return Conversion(
+        law=found.fit.law,
+        time_factor=math.exp(ln_factor),
+        exact=False,
+        largest_error_decades=error,
+        error_at=at,
+        fitted_range=(found.low, found.high),
+        note=found.note,
+        method="least-squares",
+        fit=found.fit,
+        support=found.support,
     )
 
 
@@ -234,11 +283,9 @@ def _sampled(law: ShiftLaw, T_new: float, low: float, high: float, points: int |
     return Table(T=T, log10_a=(law.ln_shift(T) - law.ln_shift(T_new)) / math.log(10.0), T_ref=T_new)
 
 
-def _largest_error(law: ShiftLaw, made: ShiftLaw, T_new: float, low: float, high: float) -> tuple[float, float]:
-    ln_new = float(law.ln_shift(T_new))
-
+def _largest_error(law: ShiftLaw, made: ShiftLaw, ln_factor: float, low: float, high: float) -> tuple[float, float]:
     def error(T: FloatArray) -> FloatArray:
-        return np.abs(law.ln_shift(T) - ln_new - made.ln_shift(T)) / math.log(10.0)
+        return np.abs(law.ln_shift(T) - ln_factor - made.ln_shift(T)) / math.log(10.0)
 
     knots = (*law.knots, *made.knots)
     middles = 0.5 * (np.asarray(knots[1:]) + np.asarray(knots[:-1]))

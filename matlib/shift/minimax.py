@@ -7,17 +7,18 @@ at the reference temperature whatever the constants, so that the master curve me
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 
 import numpy as np
 
 from matlib.arrays import FloatArray
 
-__all__ = ["LOWEST_POLE", "best_amplitude", "best_pole"]
+__all__ = ["CLOSEST", "LOWEST_POLE", "best_amplitude", "best_pole", "golden_section"]
 
 LOWEST_POLE = (
     -1e4
 )  # K; with the pole that far down the slope of ln a_T changes by 2 % over 100 K: all but straight in T
-_CLOSEST = 1e-3  # K: how near the pole may come to the range
+CLOSEST = 1e-3  # K: how near the pole may come to the range
 _SCAN = 160
 _GOLDEN = 0.5 * (math.sqrt(5.0) - 1.0)
 
@@ -74,6 +75,28 @@ def family_function(T: FloatArray, T_inf: float, T_ref: float) -> FloatArray:
     return np.asarray((T_ref - T) / ((T - T_inf) * (T_ref - T_inf)))
 
 
+def golden_section(f: Callable[[float], float], low: float, high: float, tolerance: float) -> float:
+    """Where a function of one valley is least, between `low` and `high`, to `tolerance` times the larger of 1 and |x|.
+
+    Examples
+    --------
+    >>> round(golden_section(lambda x: (x - 0.25) ** 2, 0.0, 1.0, 1e-6), 5)
+    0.25
+    """
+    left, right = high - _GOLDEN * (high - low), low + _GOLDEN * (high - low)
+    f_left, f_right = f(left), f(right)
+    while high - low > tolerance * max(1.0, abs(low)):
+        if f_left <= f_right:
+            high, right, f_right = right, left, f_left
+            left = high - _GOLDEN * (high - low)
+            f_left = f(left)
+        else:
+            low, left, f_left = left, right, f_right
+            right = low + _GOLDEN * (high - low)
+            f_right = f(right)
+    return min((low, left, right, high), key=f)
+
+
 def best_pole(coarse: tuple[FloatArray, FloatArray], fine: tuple[FloatArray, FloatArray], T_ref: float) -> float:
     r"""The :math:`T_\infty` that makes the largest error least, `B` being the best for each.
 
@@ -99,19 +122,8 @@ def best_pole(coarse: tuple[FloatArray, FloatArray], fine: tuple[FloatArray, Flo
     def error(ln_distance: float, T: FloatArray, y: FloatArray) -> float:
         return best_amplitude(y, family_function(T, top - math.exp(ln_distance), T_ref))[1]
 
-    scan = np.linspace(math.log(_CLOSEST), math.log(top - LOWEST_POLE), _SCAN)
+    scan = np.linspace(math.log(CLOSEST), math.log(top - LOWEST_POLE), _SCAN)
     best = int(np.argmin([error(s, *coarse) for s in scan]))
     low, high = float(scan[max(best - 1, 0)]), float(scan[min(best + 1, _SCAN - 1)])
-    left, right = high - _GOLDEN * (high - low), low + _GOLDEN * (high - low)
-    error_left, error_right = error(left, *fine), error(right, *fine)
-    while high - low > 1e-12 * max(1.0, abs(low)):
-        if error_left <= error_right:
-            high, right, error_right = right, left, error_left
-            left = high - _GOLDEN * (high - low)
-            error_left = error(left, *fine)
-        else:
-            low, left, error_left = left, right, error_right
-            right = low + _GOLDEN * (high - low)
-            error_right = error(right, *fine)
-    found = min((low, left, right, high), key=lambda s: error(s, *fine))
+    found = golden_section(lambda s: error(s, *fine), low, high, 1e-12)
     return max(top - math.exp(found), LOWEST_POLE)
