@@ -24,7 +24,7 @@ app = typer.Typer(
 )
 
 CardFile = Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml.")]
-CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card files, *.card.toml.")]
+CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card files, *.card.toml, or folders of them.")]
 PathFile = Annotated[str, typer.Argument(metavar="PATH", help="A path file, *.path.toml.")]
 Json = Annotated[
     str | None, typer.Option("--json", metavar="FILE", help="Write the result as JSON; - for standard output.")
@@ -170,8 +170,8 @@ def drive(
 
 @app.command()
 def compare(
-    card_a: Annotated[str, typer.Argument(metavar="CARD_A", help="The card that counts as right.")],
-    card_b: Annotated[str, typer.Argument(metavar="CARD_B", help="The card in question.")],
+    card_a: Annotated[str, typer.Argument(metavar="CARD_A", help="The card that counts as right, or a folder.")],
+    card_b: Annotated[str, typer.Argument(metavar="CARD_B", help="The card in question, or a folder.")],
     path: Annotated[
         list[str] | None, typer.Option("--path", metavar="PATH", help="A path file; may be repeated. Else the battery.")
     ] = None,
@@ -213,6 +213,53 @@ def steps(
     raise typer.Exit(
         run(card, path, tolerance=tolerance, shift_rule=shift_rule, recursion=recursion, plot=plot, json_file=json)
     )
+
+
+@app.command()
+def record(
+    card: CardFile,
+    path: Annotated[
+        list[str] | None, typer.Option("--path", metavar="PATH", help="A path file; may be repeated. Else the battery.")
+    ] = None,
+    tolerance: Annotated[
+        list[str] | None,
+        typer.Option("--tolerance", metavar="X", help="1% (default) or 0.01 of a path's peak; once, or once a path."),
+    ] = None,
+    output: Annotated[
+        str | None, typer.Option("-o", "--output", metavar="BASELINE", help="Else X.baseline.json beside X.card.toml.")
+    ] = None,
+    json: Json = None,
+) -> None:
+    """Store the behaviour of a card as accepted.
+
+    Example: cardproof record cardproof-demo/laboratory.card.toml -o cardproof-demo/laboratory.baseline.json
+    """
+    from drivers.commands.record import run
+
+    raise typer.Exit(run(card, paths=path or [], tolerances=tolerance or [], output=output, json_file=json))
+
+
+@app.command()
+def verify(
+    card: Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml, or a folder of them.")],
+    baseline: Annotated[
+        str | None, typer.Argument(metavar="BASELINE", help="Else X.baseline.json beside X.card.toml.")
+    ] = None,
+    spread: Annotated[
+        str | None, typer.Option("--spread", metavar="FILE", help="Does the change exceed this calibration's scatter?")
+    ] = None,
+    samples: Annotated[int, typer.Option("--samples", metavar="N", help="Sampled cards, with --spread.")] = 200,
+    seed: Annotated[int, typer.Option("--seed", metavar="N", help="Of the samples.", min=0)] = 0,
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """Does a card still behave as accepted, and if not, what moved?
+
+    Example: cardproof verify cardproof-demo/slip.card.toml cardproof-demo/laboratory.baseline.json
+    """
+    from drivers.commands.verify import run
+
+    raise typer.Exit(run(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json))
 
 
 def main(arguments: list[str] | None = None) -> int:

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from drivers.commands.inputs import read_all
 from drivers.commands.output import deliver, require_folder
+from drivers.library import is_folder
 from drivers.report.data import checks_data
 from drivers.report.tables import findings_table
 from matlib.admissibility import check_card
@@ -17,6 +18,10 @@ __all__ = ["run"]
 def run(files: Sequence[str], *, json_file: str | None = None) -> int:
     """Check cards and say what was found; the faults of all unreadable files at once."""
     require_folder(json_file)
+    if any(is_folder(file) for file in files):
+        from drivers.commands.library import check_library
+
+        return check_library(files, json_file=json_file)
     results = [(card, check_card(card)) for card in read_all(read_card, files)]
     tables = [part for card, findings in results for part in findings_table(card, findings)]
     return deliver(checks_data(results), tables, json_file)

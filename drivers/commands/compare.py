@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from drivers.battery import Window, battery, card_window, paths_window
 from drivers.commands.inputs import gather, read_all
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.library import is_folder
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.data import comparison_data
@@ -16,6 +17,7 @@ from drivers.studies.compare import Comparison, compare
 from drivers.studies.slips import Slip, find_slips
 from drivers.studies.slips.evidence import Evidence
 from matlib.card import Card, read_card
+from matlib.errors import ParameterError
 
 __all__ = ["compare_cards", "likely_slips", "run", "what_to_compare"]
 
@@ -34,6 +36,12 @@ def run(
     """Compare two cards and say where they differ most."""
     require_folder(json_file)
     require_picture(plot)
+    if is_folder(file_a) or is_folder(file_b):
+        from drivers.commands.library import compare_library
+
+        if plot is not None:
+            raise ParameterError("--plot", "left out for folders", repr(plot))
+        return compare_library(file_a, file_b, paths=paths, tolerance=tolerance, json_file=json_file)
     fraction = parse_tolerance(tolerance)
     a, b = read_all(read_card, [file_a, file_b])
     given, window = what_to_compare(a, b, paths)
