@@ -26,7 +26,7 @@ from matlib.effective import (
 from matlib.interconversion import creep_of
 from matlib.prony import CreepSeries, PronySeries
 
-__all__ = ["ONE", "DRIVEN", "MECHANICAL", "THERMAL", "ExpKernel", "ModeResponse", "mode_response"]
+__all__ = ["DRIVEN", "MECHANICAL", "ONE", "THERMAL", "ExpKernel", "ModeResponse", "mode_response"]
 
 DRIVEN, THERMAL, MECHANICAL = "driven", "thermal", "mechanical"
 Terms = tuple[tuple[str, "ExpKernel"], ...]
