@@ -262,6 +262,41 @@ def verify(
     raise typer.Exit(run(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json))
 
 
+@app.command()
+def sweep(
+    file: Annotated[str, typer.Argument(metavar="SWEEP", help="A sweep file, *.sweep.toml.")],
+    processes: Annotated[
+        int | None, typer.Option("--processes", metavar="N", help="Local processes; one a core if left out.")
+    ] = None,
+    on: Annotated[
+        str | None, typer.Option("--on", metavar="ADDRESS", help="A Dask scheduler, as in tcp://host:8786.")
+    ] = None,
+    retry_failed: Annotated[bool, typer.Option("--retry-failed", help="Run failed cases again.")] = False,
+    csv: Annotated[str | None, typer.Option("--csv", metavar="FILE", help="Write all rows as CSV.")] = None,
+    parquet: Annotated[str | None, typer.Option("--parquet", metavar="FILE", help="Write all rows as Parquet.")] = None,
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """Many cards, paths, rules and sampled constants; stopped or killed, it goes on where it was.
+
+    Example: cardproof sweep library.sweep.toml --csv results.csv
+    """
+    from drivers.commands.sweep import run
+
+    raise typer.Exit(
+        run(
+            file,
+            processes=processes,
+            on=on,
+            retry_failed=retry_failed,
+            csv=csv,
+            parquet=parquet,
+            plot=plot,
+            json_file=json,
+        )
+    )
+
+
 def main(arguments: list[str] | None = None) -> int:
     """Run the command line.
 

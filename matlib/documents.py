@@ -8,18 +8,29 @@ import os
 import stat
 import tempfile
 import tomllib
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any, TypeVar
 
 from pydantic import BaseModel, ConfigDict, ValidationError
 from pydantic_core import ErrorDetails
 
-from matlib.errors import Fault, FaultyInputError, FileError
+from matlib.errors import Fault, FaultyInputError, FileError, FilesError
 
-__all__ = ["ContradictionError", "Document", "read_text", "read_toml", "shown", "validated", "write_atomically"]
+__all__ = [
+    "Document",
+    "gather",
+    "read_all",
+    "read_text",
+    "read_toml",
+    "shown",
+    "validated",
+    "write_atomically",
+]
 
 LARGEST_FILE = 64 * 2**20  # bytes; a measured record of a million rows stays below
 
+Read = TypeVar("Read")
 DocumentType = TypeVar("DocumentType", bound="Document")
 
 
@@ -271,3 +282,33 @@ def _umask() -> int:
     mask = os.umask(0)
     os.umask(mask)
     return mask
+
+
+def read_all(reader: Callable[[str], Read], files: Sequence[str]) -> list[Read]:
+    """Read every file, or raise the faults of all of them.
+
+    Parameters
+    ----------
+    reader : callable
+        Takes a file's name; raises `FileError`.
+    files : sequence of str
+
+    Raises
+    ------
+    FilesError
+        If any file has a fault.
+    """
+    return gather([lambda file=file: reader(file) for file in files])  # type: ignore[misc]
+
+
+def gather(tasks: Sequence[Callable[[], Read]]) -> list[Read]:
+    """Run every task, or raise the file faults of all of them (`FilesError`)."""
+    results, errors = [], []
+    for task in tasks:
+        try:
+            results.append(task())
+        except FileError as error:
+            errors.append(error)
+    if errors:
+        raise FilesError(errors)
+    return results

@@ -19,7 +19,7 @@ LAYERS = [  # from the bottom up; a module imports from lower layers, and from i
     "matlib.card* matlib.shift_tables matlib.shift_findings matlib.finding matlib.admissibility",
     "drivers drivers.history drivers.path drivers.path_file drivers.record_file",
     "drivers.*",  # the loop, the reference solution, the battery, routines that are not ours
-    "drivers.studies*",
+    "drivers.studies* drivers.sweep*",
     "drivers.report*",
     "drivers.commands*",
     "drivers.cli",

@@ -1,0 +1,60 @@
+"""``cardproof sweep``."""
+
+from __future__ import annotations
+
+import os
+
+from drivers.commands.output import deliver, require_folder, require_picture, save_figure
+from drivers.report.progress import progress
+from drivers.report.sweep import sweep_data, sweep_figure, sweep_tables
+from drivers.sweep.plan import plan_of
+from drivers.sweep.run import run_sweep
+from drivers.sweep.store import csv_of, parquet_of
+from drivers.sweep.sweep_file import read_sweep
+from matlib.documents import write_atomically
+from matlib.errors import ParameterError
+
+__all__ = ["run"]
+
+MOST_PROCESSES = 1024
+
+
+def run(
+    file: str,
+    *,
+    processes: int | None = None,
+    on: str | None = None,
+    retry_failed: bool = False,
+    csv: str | None = None,
+    parquet: str | None = None,
+    plot: str | None = None,
+    json_file: str | None = None,
+) -> int:
+    """Run what is left of a sweep; exit 0 where every case ran and is within the tolerance."""
+    for output in (json_file, csv, parquet):
+        require_folder(output)
+    require_picture(plot)
+    if parquet is not None:
+        _require_parquet()
+    if processes is not None and not 1 <= processes <= MOST_PROCESSES:
+        raise ParameterError("--processes", f"from 1 to {MOST_PROCESSES}", processes)
+    plan = plan_of(read_sweep(file))
+    with progress(plan.sweep.name, len(plan)) as advance:
+        result = run_sweep(
+            plan, processes=processes or os.cpu_count() or 1, on=on, retry_failed=retry_failed, progress=advance
+        )
+    if csv is not None:
+        write_atomically(csv, csv_of(result.rows))
+    if parquet is not None:
+        write_atomically(parquet, parquet_of(result.rows))
+    if plot is not None:
+        save_figure(sweep_figure(result), plot)
+    return deliver(sweep_data(result, csv, parquet), sweep_tables(result), json_file)
+
+
+def _require_parquet() -> None:
+    try:
+        import pyarrow  # noqa: F401
+    except ImportError:
+        hint = "install cardproof[parquet], or use --csv"
+        raise ParameterError("--parquet", "given where pyarrow is installed", "no such package", hint) from None
