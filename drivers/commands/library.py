@@ -88,6 +88,7 @@ def compare_library(
 
     def compared(name: str, one: str | None, other: str | None) -> Entry:
         if one is None or other is None:
+            read_all(read_card, [file for file in (one, other) if file is not None])
             lacking = second if other is None else first
             return Entry(name=name, outcome="missing", note=f"no partner in {lacking}", content={"files": [one, other]})
         return _compared(name, one, other, paths, fraction)

@@ -154,7 +154,9 @@ def verified_tables(verified: Verified) -> list[RenderableType]:
     """Verdict, what moved, paths: the worst first."""
     verification = verified.verification
     behaves = "behaves as accepted" if verified.holds else "does not behave as accepted"
-    line = f"{verified.card.name} {behaves}: {verdict_text(verification.worst)}"
+    line = f"{verified.card.name} {behaves}: at most {verdict_text(verification.worst)}"
+    if verification.worst.difference is None:
+        line = f"{verified.card.name} {behaves}: {verdict_text(verification.worst)}"
     tables: list[RenderableType] = [verdict_line(verified.holds, line), *slip_tables(verified.slips)]
     tables += _moved_lines(verified)
     tables.append(_paths_table(verification.paths, verified.card))
