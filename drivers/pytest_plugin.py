@@ -16,7 +16,14 @@ if TYPE_CHECKING:
     from drivers.studies.baseline import PathVerdict
     from matlib.card import Card
 
-__all__ = ["AcceptedPath", "BaselineFile", "CardMoved", "ReadableBaseline", "likely_slip_lines", "pytest_collect_file"]
+__all__ = [
+    "AcceptedPath",
+    "BaselineFile",
+    "CardMovedError",
+    "ReadableBaseline",
+    "likely_slip_lines",
+    "pytest_collect_file",
+]
 
 BASELINE, CARD = ".baseline.json", ".card.toml"
 MARK = b'"format": "cardproof baseline"'
@@ -41,7 +48,7 @@ def _is_marked(file: Path) -> bool:
         return False
 
 
-class CardMoved(Exception):
+class CardMovedError(Exception):
     """A card does not behave as accepted on one path; the text says how far it has moved, and where."""
 
 
@@ -81,7 +88,7 @@ class _CardItem(pytest.Item):
         """The message alone for what is known to go wrong; all there is for anything else."""
         from matlib.errors import CardproofError
 
-        if isinstance(excinfo.value, CardMoved | CardproofError):
+        if isinstance(excinfo.value, CardMovedError | CardproofError):
             return str(excinfo.value)
         return super().repr_failure(excinfo, style)
 
@@ -118,7 +125,7 @@ class AcceptedPath(_CardItem):
         verdict = verify_path(self.card.material(), self.baseline.paths[self.number])
         self.user_properties += [("relative", verdict.relative), ("tolerance", verdict.tolerance)]
         if not verdict.holds:
-            raise CardMoved(self._failure(verdict))
+            raise CardMovedError(self._failure(verdict))
 
     def _failure(self, verdict: PathVerdict) -> str:
         from drivers.report.baseline import verdict_text
