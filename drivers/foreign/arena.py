@@ -12,8 +12,8 @@ from matlib.routine import Increment
 
 __all__ = ["Arena", "Guarded", "LocalFailureError", "increment_of", "rows_for"]
 
-GUARD = 8
-"""Numbers before and, at least, after each array that a routine writes; nothing may change there."""
+GUARD = 16
+"""Numbers, at least, before and after each array that a routine writes; nothing may change there."""
 
 _PATTERN = np.uint64(0x7FF8_C0DE_C0DE_C0DE)
 """A NaN that no arithmetic makes: what guards hold."""
@@ -38,60 +38,65 @@ class LocalFailureError(Exception):
 
 
 class Guarded(NamedTuple):
-    """Rows of numbers with guards around each."""
+    """Rows of numbers with guards between them, before the first and after the last.
+
+    Parameters
+    ----------
+    name : str
+        As the contract calls it.
+    body : ndarray, shape (rows, width)
+    gaps : ndarray of uint64, shape (rows + 1, gap)
+        The guards: row k before body k, row k + 1 after it.
+    """
 
     name: str
-    whole: FloatArray
     body: FloatArray
-    before: NDArray[np.uint64]
-    after: NDArray[np.uint64]
+    gaps: NDArray[np.uint64]
 
     def guard(self) -> None:
         """Set every guard."""
-        self.before[...] = _PATTERN
-        self.after[...] = _PATTERN
+        self.gaps[...] = _PATTERN
 
     def forget(self, rows: slice) -> None:
         """Mark what rows hold as never written."""
         self.body.view(np.uint64)[rows] = _UNWRITTEN
 
-    def first_broken(self, rows: slice) -> int | None:
-        """The first of the rows whose guards have changed."""
-        before, after = self.before[rows] != _PATTERN, self.after[rows] != _PATTERN
-        if not (before.any() or after.any()):
+    def complaint_of_gaps(self, first: int, stop: int) -> tuple[int, str] | None:
+        """Whether a guard around the rows `first` to `stop` has changed: the row next to it, and what was written."""
+        gaps = self.gaps[first : stop + 1]
+        if gaps.tobytes() == _PATTERN.tobytes() * gaps.size:
             return None
-        return int((before.any(axis=1) | after.any(axis=1)).argmax())
+        broken = gaps != _PATTERN
+        gap = int(broken.any(axis=1).argmax())
+        places, width = np.flatnonzero(broken[gap]), self.body.shape[1]
+        if gap > 0 and places[0] < gaps.shape[1] - 1 - places[-1]:
+            return first + gap - 1, f"wrote {self.name}[{width + int(places[0])}], which has {width} numbers"
+        return first + gap, f"wrote {self.name}[{int(places[-1]) - gaps.shape[1]}], before its start"
 
-    def complaint(self, row: int) -> str:
-        """How far beyond its end, or before its start, a row was written."""
-        after = np.flatnonzero(self.after[row] != _PATTERN)
-        if after.size:
-            return f"wrote {self.name}[{self.body.shape[1] + int(after[0])}], which has {self.body.shape[1]} numbers"
-        before = np.flatnonzero(self.before[row] != _PATTERN)
-        return f"wrote {self.name}[{int(before[-1]) - GUARD}], before its start"
-
-    def first_wild(self, rows: slice) -> int | None:
-        """The first of the rows that hold a number that is not finite."""
-        fine = np.isfinite(self.body[rows])
-        return None if fine.all() else int((~fine.all(axis=1)).argmax())
-
-    def wildness(self, row: int) -> str:
-        """Which number of a row is not finite, and how."""
+    def complaint_of_numbers(self, first: int, stop: int) -> tuple[int, str] | None:
+        """Whether a number in the rows `first` to `stop` is not finite: its row, and how."""
+        fine = np.isfinite(self.body[first:stop])
+        if fine.all():
+            return None
+        row = first + int((~fine.all(axis=1)).argmax())
         column = int((~np.isfinite(self.body[row])).argmax())
-        if self.body.view(np.uint64)[row, column] == _UNWRITTEN:
-            return f"{self.name}[{column}] was never written"
-        return f"{self.name}[{column}] is {self.body[row, column]}"
+        if self.body[row].view(np.uint64)[column] == _UNWRITTEN:
+            return row, f"{self.name}[{column}] was never written"
+        return row, f"{self.name}[{column}] is {self.body[row, column]}"
 
 
 def _stride(width: int) -> int:
-    """Whole cache lines, the guards on both sides included."""
-    return GUARD + -(-(width + GUARD) // 8) * 8
+    """Whole cache lines, the guard included."""
+    return -(-(width + GUARD) // 8) * 8
+
+
+def _row_size(memory_size: int) -> int:
+    return 3 * INCREMENT + 2 * _stride(memory_size) + _stride(6) + _stride(36)
 
 
 def rows_for(memory_size: int) -> int:
     """Increments that one arena holds."""
-    row = 8 * (2 * INCREMENT + INCREMENT + 2 * _stride(memory_size) + _stride(6) + _stride(36))
-    return max(1, min(MOST_ROWS, LARGEST // row))
+    return max(1, min(MOST_ROWS, LARGEST // (8 * _row_size(memory_size))))
 
 
 class Arena:
@@ -135,9 +140,8 @@ class Arena:
     @staticmethod
     def size(memory_size: int) -> int:
         """Bytes of an arena."""
-        rows = rows_for(memory_size)
-        memories = (2 * rows + 1) * _stride(memory_size)
-        return 8 * (_HEAD + rows * (3 * INCREMENT + _stride(6) + _stride(36)) + memories)
+        once = 3 * _stride(memory_size) + _stride(6) + _stride(36)  # guards before the first rows, one more memory
+        return 8 * (_HEAD + rows_for(memory_size) * _row_size(memory_size) + once)
 
     def _taken(self, rows: int, stride: int) -> FloatArray:
         start = self._used
@@ -145,9 +149,10 @@ class Arena:
         return self._numbers[start : self._used].reshape(rows, stride)
 
     def _guarded(self, name: str, rows: int, width: int) -> Guarded:
-        whole = self._taken(rows, _stride(width))
-        bits = whole.view(np.uint64)
-        return Guarded(name, whole, whole[:, GUARD : GUARD + width], bits[:, :GUARD], bits[:, GUARD + width :])
+        whole = self._taken(
+            rows + 1, _stride(width)
+        )  # each row a body and the guard after it; the first body is unused
+        return Guarded(name, whole[1:, :width], whole.view(np.uint64)[:, width:])
 
     @property
     def row(self) -> int | None:
@@ -165,6 +170,7 @@ class Arena:
         self.memory.forget(slice(1, n + 1))
         self.stress.forget(slice(0, n))
         self.tangent.forget(slice(0, n))
+        self.steps_kept[:n] = self.steps[:n]
         self.head[1] = self.head[0]
 
     def check(self, n: int) -> None:
@@ -175,29 +181,24 @@ class Arena:
         LocalFailureError
             For the first call that wrote where it must not, or left a number that is not finite.
         """
-        rows, ends = slice(0, n), slice(1, n + 1)
         found: list[tuple[int, int, str, str]] = []
-        for region, part, offset in ((self.memory, ends, 1), (self.stress, rows, 0), (self.tangent, rows, 0)):
-            row = region.first_broken(part)
-            if row is not None:
-                found.append((row, 0, "out-of-bounds", region.complaint(row + offset)))
-            row = region.first_wild(part)
-            if row is not None:
-                found.append((row, 2, "not-finite", region.wildness(row + offset)))
-        row = self.given.first_broken(rows)
-        if row is not None:
-            found.append((row, 0, "out-of-bounds", self.given.complaint(row)))
-        for name, a, b in (
-            ("step", self.steps, self.steps_kept),
-            ("memory", self.given.body, self.memory.body),
+        for region, first in ((self.given, 0), (self.memory, 1), (self.stress, 0), (self.tangent, 0)):
+            complaint = region.complaint_of_gaps(first, first + n)
+            if complaint is not None:
+                found.append((complaint[0] - first, 0, "out-of-bounds", complaint[1]))
+            complaint = region.complaint_of_numbers(first, first + n)
+            if complaint is not None:
+                found.append((complaint[0] - first, 2, "not-finite", complaint[1]))
+        for name, now, before in (
+            ("step", self.steps[:n], self.steps_kept[:n]),
+            ("memory", self.given.body[:n], self.memory.body[:n]),
         ):
-            changed = a[rows].view(np.uint64) != b[rows].view(np.uint64)
-            if changed.any():
-                first = int(changed.any(axis=1).argmax())
-                found.append((first, 1, "input-changed", f"wrote into its input `{name}`"))
+            if now.tobytes() != before.tobytes():
+                row = int((now.view(np.uint64) != before.view(np.uint64)).any(axis=1).argmax())
+                found.append((row, 1, "input-changed", f"wrote into its input `{name}`"))
         if found:
             row, _, kind, detail = min(found)
-            raise LocalFailureError(row, kind, detail)
+            raise LocalFailureError(min(max(row, 0), n - 1), kind, detail)
 
 
 def increment_of(row: FloatArray) -> Increment:

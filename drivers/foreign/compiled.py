@@ -23,6 +23,7 @@ Function = Callable[..., int]
 
 _ROOT2 = math.sqrt(2.0)
 _ENGINEERING = np.array([1.0, 1.0, 1.0, _ROOT2, _ROOT2, _ROOT2])
+_BOTH_STRAINS = np.tile(_ENGINEERING, 2)
 _TANGENT = np.outer(_ENGINEERING, _ENGINEERING)
 LOST = 1e-12
 """Share of a duration that the difference of the two times may lose."""
@@ -58,14 +59,22 @@ def steps_of(increments: FloatArray, steps: FloatArray) -> None:
     steps : ndarray, shape (n, 16)
         Two times, two temperatures, two strains with engineering shear; overwritten.
     """
-    time, duration = increments[:, 0], increments[:, 1]
-    end = time + duration
-    lost = np.abs((end - time) - duration) > LOST * duration
-    steps[:, 0] = np.where(lost, 0.0, time)
-    steps[:, 1] = np.where(lost, duration, end)
+    np.multiply(increments[:, 4:], _BOTH_STRAINS, out=steps[:, 4:])
     steps[:, 2:4] = increments[:, 2:4]
-    np.multiply(increments[:, 4:10], _ENGINEERING, out=steps[:, 4:10])
-    np.multiply(increments[:, 10:16], _ENGINEERING, out=steps[:, 10:16])
+    if len(steps) == 1:  # by hand: an update alone is taken often
+        time, duration = float(increments[0, 0]), float(increments[0, 1])
+        end = time + duration
+        steps[0, :2] = (0.0, duration) if abs((end - time) - duration) > LOST * duration else (time, end)
+        return
+    times, durations = increments[:, 0], increments[:, 1]
+    ends = times + durations
+    lost = np.abs((ends - times) - durations) > LOST * durations
+    steps[:, 0], steps[:, 1] = np.where(lost, 0.0, times), np.where(lost, durations, ends)
+
+
+def _as_bytes(rows: FloatArray) -> list[memoryview]:
+    """Each row as bytes that can be copied without numpy."""
+    return [memoryview(row).cast("B") for row in rows]
 
 
 class CompiledRoutine(LocalRoutine):
@@ -90,7 +99,8 @@ class CompiledRoutine(LocalRoutine):
         self._calls = [
             (steps[k], count, address, size, given[k], memory[k + 1], stress[k], tangent[k]) for k in range(arena.rows)
         ]
-        self._start = memory[0]
+        given_rows, memory_rows = _as_bytes(arena.given.body), _as_bytes(arena.memory.body)
+        self._copies = list(zip(given_rows, memory_rows, strict=False))
         self._begun = ctypes.c_int64.from_address(arena.head.ctypes.data)
 
     @property
@@ -102,26 +112,26 @@ class CompiledRoutine(LocalRoutine):
         """Take the first `n` increments of the arena."""
         arena = self.arena
         steps_of(arena.increments[:n], arena.steps[:n])
-        arena.steps_kept[:n] = arena.steps[:n]
         arena.prepare(n)
         done, code = self._loop(n)
         arena.check(done)
-        if self._constants.tobytes() != self._constants_kept.tobytes():  # which call did it is for the harness to find out
+        if (
+            self._constants.tobytes() != self._constants_kept.tobytes()
+        ):  # which call did it is for the harness to find out
             raise LocalFailureError(0, "input-changed", "wrote into its input `constants`")
         if code:
             raise LocalFailureError(done, "code", f"it returned {code}")
 
     def _loop(self, n: int) -> tuple[int, int]:
         """Number of calls that returned 0, and the code of the one that did not."""
-        function, begun, copy, size = self._function, self._begun, ctypes.memmove, 8 * self._memory_size
-        count, last = begun.value, self._start
-        for k, arguments in enumerate(self._calls[:n]):
-            copy(arguments[4], last, size)
+        function, begun, everything = self._function, self._begun, slice(None)
+        count = begun.value
+        for k, (arguments, (given, memory)) in enumerate(zip(self._calls[:n], self._copies, strict=False)):
+            given[everything] = memory
             begun.value = count = count + 1
             code = function(*arguments)
             if code:
                 return k, code
-            last = arguments[5]
         return n, 0
 
     def stresses(self, n: int) -> FloatArray:

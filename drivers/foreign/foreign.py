@@ -169,7 +169,7 @@ class ForeignRoutine(BlockRoutine):
         assert arena is not None
         if row is None:  # the process died or hung; an earlier call may have been the one that went wrong
             row = arena.row
-            if row is not None and self.described.document.library is not None:
+            if row and self.described.document.library is not None:
                 try:
                     arena.check(row)
                 except LocalFailureError as earlier:
