@@ -122,8 +122,9 @@ class PythonRoutine(LocalRoutine):
             (arena.memory, k + 1, parts[2]),
         ):
             region.body[row] = values
-            if not np.isfinite(values).all():
-                raise LocalFailureError(k, "not-finite", region.wildness(row))
+            complaint = region.complaint_of_numbers(row, row + 1)
+            if complaint is not None:
+                raise LocalFailureError(k, "not-finite", complaint[1])
 
     def _parts(self, k: int, answer: Any) -> list[FloatArray]:
         """Stress, tangent and memory of an answer, their shapes checked."""
