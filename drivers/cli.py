@@ -263,6 +263,28 @@ def verify(
 
 
 @app.command()
+def audit(
+    routine: Annotated[str | None, typer.Argument(metavar="ROUTINE", help="A routine file, *.routine.toml.")] = None,
+    card: Annotated[
+        str | None, typer.Option("--card", metavar="CARD", help="The card that the routine is meant to be.")
+    ] = None,
+    quick: Annotated[bool, typer.Option("--quick", help="Fewer paths: for a loop of editing and compiling.")] = False,
+    replay: Annotated[
+        str | None, typer.Option("--replay", metavar="FILE", help="Take one increment that failed once more.")
+    ] = None,
+    plot: Plot = None,
+    json: Json = None,
+) -> None:
+    """Is a stress-update routine right?
+
+    Example: cardproof audit mine.routine.toml --card cardproof-demo/laboratory.card.toml
+    """
+    from drivers.commands.audit import run_either
+
+    raise typer.Exit(run_either(routine, replay_file=replay, card_file=card, quick=quick, plot=plot, json_file=json))
+
+
+@app.command()
 def sweep(
     file: Annotated[str, typer.Argument(metavar="SWEEP", help="A sweep file, *.sweep.toml.")],
     processes: Annotated[

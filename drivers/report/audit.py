@@ -7,14 +7,16 @@ from typing import TYPE_CHECKING, Any
 from rich.console import RenderableType
 from rich.text import Text
 
+from drivers.foreign.replay import ReplayResult
 from drivers.report.data import envelope
 from drivers.report.tables import plain_table, verdict_line
 from drivers.studies.audit import AuditResult, CheckResult
+from matlib.tensors import stress_from_mandel
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-__all__ = ["audit_data", "audit_figure", "audit_tables"]
+__all__ = ["audit_data", "audit_figure", "audit_tables", "replay_data", "replay_tables"]
 
 
 def audit_data(result: AuditResult, routine: str, card: str | None) -> dict[str, Any]:
@@ -94,3 +96,33 @@ def audit_figure(result: AuditResult) -> Figure:
     axes.grid(True, axis="x", color="#d1d5db", linewidth=0.5)
     axes.spines[["top", "right"]].set_visible(False)
     return figure
+
+
+def replay_data(result: ReplayResult) -> dict[str, Any]:
+    """What one increment gives now."""
+    replay, update = result.replay, result.update
+    return envelope(
+        "audit",
+        result.failure is None,
+        replay=replay.file,
+        routine=replay.routine_file,
+        kind=replay.kind,
+        now=None if result.failure is None else result.failure.kind,
+        detail=replay.detail if result.failure is None else result.failure.detail,
+        stress=None if update is None else stress_from_mandel(update.stress).tolist(),
+    )
+
+
+def replay_tables(result: ReplayResult) -> list[RenderableType]:
+    """Whether the increment still fails, and how."""
+    replay, failure = result.replay, result.failure
+    if failure is not None:
+        again = "as it did" if result.reproduced else f"otherwise than before ({replay.kind})"
+        return [verdict_line(False, f"the increment fails {again}: {failure}")]
+    assert result.update is not None
+    stress = ", ".join(f"{value:.6g}" for value in stress_from_mandel(result.update.stress))
+    return [
+        verdict_line(
+            True, f"the increment that failed ({replay.kind}) gives a stress now: {stress} Pa (11 22 33 23 13 12)"
+        )
+    ]
