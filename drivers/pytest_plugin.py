@@ -55,6 +55,9 @@ class CardMovedError(Exception):
 class BaselineFile(pytest.File):
     """A baseline and the card beside it."""
 
+    slip_lines: list[str] | None = None
+    """Of this baseline, once a path has failed: they are looked for once, on all its paths."""
+
     def collect(self) -> Iterator[pytest.Item]:
         """One test a path; one that fails where the baseline or the card cannot be used."""
         from drivers.baseline_file import read_baseline
@@ -142,7 +145,7 @@ class AcceptedPath(_CardItem):
             lines.append(f"largest: {difference.component} by {size}, at {where}")
         try:
             lines += self._moved_lines()
-            lines += likely_slip_lines(self.baseline, self.card)
+            lines += self._slip_lines()
         except CardproofError as error:
             lines.append(f"what moved is not known: {error}")
         return "\n".join(lines)
@@ -153,6 +156,13 @@ class AcceptedPath(_CardItem):
 
         moved = what_moved(self.baseline.card(), self.card, [self.baseline.paths[self.number]])
         return [moved_sentence(one) for one in moved if one.matters]
+
+    def _slip_lines(self) -> list[str]:
+        file = self.parent
+        assert isinstance(file, BaselineFile)
+        if file.slip_lines is None:
+            file.slip_lines = likely_slip_lines(self.baseline, self.card)
+        return file.slip_lines
 
 
 def likely_slip_lines(baseline: Baseline, card: Card) -> list[str]:

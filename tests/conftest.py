@@ -9,6 +9,8 @@ from matlib.material import Material
 from matlib.prony import PronySeries
 from matlib.shift import WLF
 
+pytest_plugins = ["pytester"]
+
 # The same examples on every machine, and no verdict on speed: a first call may compile. Another profile by name:
 # pytest --hypothesis-profile=default
 settings.register_profile("ci", derandomize=True, deadline=None, suppress_health_check=[HealthCheck.too_slow])
