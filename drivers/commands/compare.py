@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from drivers.battery import Window, battery, card_window, paths_window
 from drivers.commands.inputs import gather, read_all
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.foreign.routine_file import is_routine_file
 from drivers.library import is_folder
 from drivers.path import Path
 from drivers.path_file import read_path
@@ -33,7 +34,7 @@ def run(
     plot: str | None = None,
     json_file: str | None = None,
 ) -> int:
-    """Compare two cards and say where they differ most."""
+    """Compare two cards, or routines in their place, and say where they differ most."""
     require_folder(json_file)
     require_picture(plot)
     if is_folder(file_a) or is_folder(file_b):
@@ -42,6 +43,10 @@ def run(
         if plot is not None:
             raise ParameterError("--plot", "left out for folders", repr(plot))
         return compare_library(file_a, file_b, paths=paths, tolerance=tolerance, json_file=json_file)
+    if is_routine_file(file_a) or is_routine_file(file_b):
+        from drivers.commands.compare_routines import run as run_routines
+
+        return run_routines(file_a, file_b, paths=paths, tolerance=tolerance, plot=plot, json_file=json_file)
     fraction = parse_tolerance(tolerance)
     a, b = read_all(read_card, [file_a, file_b])
     given, window = what_to_compare(a, b, paths)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-from drivers.commands.inputs import gather
+from drivers.commands.failing import with_routine
+from drivers.commands.inputs import gather, read_subject
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
-from drivers.history import csv_text
+from drivers.foreign.foreign import ForeignRoutine
+from drivers.foreign.routine_file import RoutineFile
+from drivers.history import History, csv_text
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.point import drive
@@ -12,11 +15,13 @@ from drivers.reference import Reference, solve
 from drivers.report.data import drive_data
 from drivers.report.progress import progress
 from drivers.report.tables import history_tables, percent
-from drivers.studies.trial import Rule
-from matlib.card import Card, read_card
+from drivers.studies.trial import OWN, Rule
+from drivers.subject import Subject
+from matlib.card import Card
 from matlib.documents import write_atomically
 from matlib.errors import ParameterError
 from matlib.recursion import find_recursion
+from matlib.routine import Routine
 from matlib.shift import find_shift_rule
 
 __all__ = ["run"]
@@ -38,7 +43,7 @@ def run(
     plot: str | None = None,
     json_file: str | None = None,
 ) -> int:
-    """Drive a card along a path; write its history and a picture where they are asked for."""
+    """Drive a card, or a routine, along a path; write its history and a picture where they are asked for."""
     for file in (output, json_file):
         require_folder(file)
     require_picture(plot)
@@ -49,31 +54,60 @@ def run(
     rule = Rule(shift_rule=shift_rule or "integrated", recursion=recursion or "exponential")
     find_shift_rule(rule.shift_rule)
     find_recursion(rule.recursion)
-    card, path = gather([lambda: read_card(card_file), lambda: read_path(path_file)])
-    assert isinstance(card, Card)
+    subject, path = gather([lambda: read_subject(card_file), lambda: read_path(path_file)])
     assert isinstance(path, Path)
-    material = card.material()
     most = LARGEST_EXACT if exact else LARGEST_HISTORY
     if path.increment_count > most and (exact or kept == "all"):
         expected = "fewer increments in the path" if exact else "ends or a number"
         raise ParameterError("--exact" if exact else "--keep", f"{expected}, since it has over {most}", kept)
+    if isinstance(subject, RoutineFile):
+        for option, given in (("--exact", exact), ("--shift-rule", shift_rule), ("--recursion", recursion)):
+            if given:
+                raise ParameterError(option, "given with a card only: a routine has a rule of its own", given)
+
+        def task() -> int:
+            with ForeignRoutine(subject) as routine:
+                history = _driven(routine, path, kept)
+            return _hand_over(history, subject, path, OWN, output=output, plot=plot, json_file=json_file)
+
+        return with_routine("drive", json_file, task)
+    assert isinstance(subject, Card)
+    material = subject.material()
     if exact:
         reference = solve(material, path)
-        history, how = reference.history.kept(kept), _exactness(reference)
+        history = reference.history.kept(kept)
     else:
-        with progress(f"driving {path.name}", path.increment_count) as advance:
-            history, how = drive(rule.routine(material), path, keep=kept, progress=advance), str(rule)
+        history = _driven(rule.routine(material), path, kept)
+    how = reference if exact else rule
+    return _hand_over(history, subject, path, how, output=output, plot=plot, json_file=json_file)
+
+
+def _driven(routine: Routine, path: Path, kept: str | int) -> History:
+    with progress(f"driving {path.name}", path.increment_count) as advance:
+        return drive(routine, path, keep=kept, progress=advance)
+
+
+def _hand_over(
+    history: History,
+    subject: Subject,
+    path: Path,
+    how: Rule | Reference,
+    *,
+    output: str | None,
+    plot: str | None,
+    json_file: str | None,
+) -> int:
+    stress, temperature = subject.stress_unit, subject.temperature_unit
     if output is not None:
-        text = csv_text(history, stress=card.stress_unit, time=card.time_unit, temperature=card.temperature_unit)
-        write_atomically(output, text)
+        write_atomically(output, csv_text(history, stress=stress, time=subject.time_unit, temperature=temperature))
     if plot is not None:
         from drivers.report.plots import drive_figure
 
-        save_figure(drive_figure(history, card, path), plot)
-    data = drive_data(history, card, path, file=output, how=reference if exact else rule)
-    title = f"{card.name} on {path.name} ({path.mode.name}; {how})"
-    tables = history_tables(history.at_segment_ends(), title, card.stress_unit, card.temperature_unit)
-    return deliver(data, tables, json_file)
+        save_figure(drive_figure(history, subject, path), plot)
+    data = drive_data(history, subject, path, file=output, how=how)
+    method = str(how) if isinstance(how, Rule) else _exactness(how)
+    title = f"{subject.name} on {path.name} ({path.mode.name}; {method})"
+    return deliver(data, history_tables(history.at_segment_ends(), title, stress, temperature), json_file)
 
 
 def _exactness(reference: Reference) -> str:

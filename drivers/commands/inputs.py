@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from drivers.subject import read_subject
 from matlib.documents import gather, read_all
 
-__all__ = ["gather", "read_all"]
+__all__ = ["gather", "read_all", "read_subject"]

@@ -2,14 +2,21 @@
 
 from __future__ import annotations
 
-from drivers.commands.inputs import gather
+from drivers.commands.failing import with_routine
+from drivers.commands.inputs import gather, read_subject
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.foreign.foreign import ForeignRoutine
+from drivers.foreign.routine_file import RoutineFile
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.progress import progress
 from drivers.report.steps import steps_data, steps_figure, steps_tables
-from drivers.studies.steps import Rule, steps
-from matlib.card import Card, read_card
+from drivers.studies.routine_runner import RoutineRunner
+from drivers.studies.steps import Rule, StepsResult, steps
+from drivers.studies.trial import OWN
+from drivers.subject import Subject
+from matlib.card import Card
+from matlib.errors import ParameterError
 from matlib.recursion import RECURSIONS, find_recursion
 from matlib.shift import SHIFT_RULES, find_shift_rule
 
@@ -17,6 +24,7 @@ __all__ = ["run"]
 
 RUNS_OF_A_RULE = 10
 OTHER_RUNS = 30
+RUNS_OF_ROUTINE = RUNS_OF_A_RULE + OTHER_RUNS
 
 
 def run(
@@ -36,9 +44,16 @@ def run(
     for name, find in ((shift_rule, find_shift_rule), (recursion, find_recursion)):
         if name is not None:
             find(name)
-    card, path = gather([lambda: read_card(card_file), lambda: read_path(path_file)])
-    assert isinstance(card, Card)
+    subject, path = gather([lambda: read_subject(card_file), lambda: read_path(path_file)])
     assert isinstance(path, Path)
+    if isinstance(subject, RoutineFile):
+        if shift_rule or recursion:
+            option = "--shift-rule" if shift_rule else "--recursion"
+            raise ParameterError(
+                option, "given with a card only: a routine has a rule of its own", shift_rule or recursion
+            )
+        return with_routine("steps", json_file, lambda: _of_routine(subject, path, fraction, plot, json_file))
+    assert isinstance(subject, Card)
     rule = Rule(shift_rule=shift_rule or "integrated", recursion=recursion or "exponential")
     rules = [
         Rule(shift_rule=one, recursion=other)
@@ -46,7 +61,19 @@ def run(
         for other in ([recursion] if recursion else RECURSIONS)
     ]
     with progress(f"increments of {path.name}", RUNS_OF_A_RULE * len(rules) + OTHER_RUNS) as advance:
-        result = steps(card.material(), path, tolerance=fraction, rule=rule, rules=rules, progress=advance)
+        result = steps(subject.material(), path, tolerance=fraction, rule=rule, rules=rules, progress=advance)
+    return _hand_over(result, subject, plot, json_file)
+
+
+def _of_routine(described: RoutineFile, path: Path, tolerance: float, plot: str | None, json_file: str | None) -> int:
+    material = None if described.card is None else described.card.material()
+    with ForeignRoutine(described) as routine, progress(f"increments of {path.name}", RUNS_OF_ROUTINE) as advance:
+        runner = RoutineRunner(routine=routine, claimed_order=routine.order, material=material)
+        result = steps(runner, path, tolerance=tolerance, rule=OWN, rules=[OWN], progress=advance)
+    return _hand_over(result, described, plot, json_file)
+
+
+def _hand_over(result: StepsResult, subject: Subject, plot: str | None, json_file: str | None) -> int:
     if plot is not None:
         save_figure(steps_figure(result), plot)
-    return deliver(steps_data(result, card), steps_tables(result, card), json_file)
+    return deliver(steps_data(result, subject), steps_tables(result, subject), json_file)

@@ -13,6 +13,7 @@ from drivers.reference import Reference
 from drivers.studies.compare import Comparison, PathComparison
 from drivers.studies.slips import Slip
 from drivers.studies.trial import Rule
+from drivers.subject import Subject, short_name
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
@@ -72,13 +73,15 @@ def _how_data(how: Rule | Reference) -> dict[str, Any]:
     return {"exact": True, "reference": {"relative_bound": how.relative_bound, "estimated": how.estimated}}
 
 
-def drive_data(history: History, card: Card, path: Path, *, file: str | None, how: Rule | Reference) -> dict[str, Any]:
+def drive_data(
+    history: History, subject: Subject, path: Path, *, file: str | None, how: Rule | Reference
+) -> dict[str, Any]:
     """What a run of a path gave, in short; its rows are in the CSV file."""
     last = len(history) - 1
     return envelope(
         "drive",
         True,
-        card=card.document.name,
+        **subject_data(subject),
         path=path.name,
         rows=len(history),
         file=file,
@@ -129,13 +132,24 @@ def slip_data(slip: Slip) -> dict[str, Any]:
     }
 
 
-def comparison_data(comparison: Comparison, a: Card, b: Card, slips: Sequence[Slip] = ()) -> dict[str, Any]:
-    """Verdict of a comparison of two cards, and the slips that explain a difference."""
+def subject_data(subject: Subject) -> dict[str, Any]:
+    """Name of a card; or of a routine, and of the card that it is meant to be."""
+    if isinstance(subject, Card):
+        return {"card": subject.document.name}
+    return {"routine": subject.name, "card": None if subject.card is None else subject.card.document.name}
+
+
+def comparison_data(comparison: Comparison, a: Subject, b: Subject, slips: Sequence[Slip] = ()) -> dict[str, Any]:
+    """Verdict of a comparison of two cards or routines, and the slips that explain a difference of cards."""
     shift = comparison.shift
     return envelope(
         "compare",
         comparison.holds,
-        cards=[{"name": card.document.name, "file": card.file} for card in (a, b)],
+        cards=[
+            {"name": short_name(one), "file": one.file, "kind": "card" if isinstance(one, Card) else "routine"}
+            for one in (a, b)
+        ],
+        basis=comparison.basis,
         same=comparison.same,
         tolerance=comparison.tolerance,
         shift={

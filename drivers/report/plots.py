@@ -11,6 +11,7 @@ from matplotlib.figure import Figure
 from drivers.history import History
 from drivers.path import Path
 from drivers.studies.compare import Comparison, PathComparison
+from drivers.subject import Subject
 from matlib.arrays import FloatArray
 from matlib.card import Card
 from matlib.errors import ShiftRangeError
@@ -58,13 +59,13 @@ def _log_times(history: History) -> bool:
     return times.size > 1 and math.log10(float(times[-1] / times[0])) > 5.0 and np.ptp(history.temperature) == 0.0
 
 
-def drive_figure(history: History, card: Card, path: Path) -> Figure:
+def drive_figure(history: History, card: Subject, path: Path) -> Figure:
     """Stress and temperature against time; stress against strain.
 
     Parameters
     ----------
     history : History
-    card : Card
+    card : Card or RoutineFile
         Gives the units.
     path : Path
 
@@ -100,13 +101,13 @@ def drive_figure(history: History, card: Card, path: Path) -> Figure:
     return figure
 
 
-def comparison_figure(comparison: Comparison, a: Card, b: Card) -> Figure:
+def comparison_figure(comparison: Comparison, a: Subject, b: Subject) -> Figure:
     """Both responses and their difference on the path that differs most, and both shift laws.
 
     Parameters
     ----------
     comparison : Comparison
-    a, b : Card
+    a, b : Card or RoutineFile
 
     Returns
     -------
@@ -122,13 +123,17 @@ def comparison_figure(comparison: Comparison, a: Card, b: Card) -> Figure:
     )
     _draw_responses(upper, lower, worst, a)
     upper.set_title(f"worst path: {worst.path.name}", loc="left", fontsize=10, fontweight="bold", parse_math=False)
-    _draw_shift_laws(right, a, b)
+    if isinstance(a, Card) and isinstance(b, Card):
+        _draw_shift_laws(right, a, b)
+    else:
+        right.set_axis_off()
+        right.text(0.5, 0.5, "shift laws: a routine does not tell its own", ha="center", transform=right.transAxes)
     names = f"A (solid): {a.name}\nB (dashed): {b.name}"
     figure.suptitle(f"{comparison.same}\n{names}", fontsize=10, x=0.01, ha="left", parse_math=False)
     return figure
 
 
-def _draw_responses(upper: Axes, lower: Axes, worst: PathComparison, card: Card) -> None:
+def _draw_responses(upper: Axes, lower: Axes, worst: PathComparison, card: Subject) -> None:
     first, second = worst.first, worst.second
     reference = first or second
     if reference is None:

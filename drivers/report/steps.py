@@ -9,11 +9,11 @@ from rich.console import RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from drivers.report.data import envelope, place_data
+from drivers.report.data import envelope, place_data, subject_data
 from drivers.report.tables import percent, place_text, plain_table, time_text, verdict_line
 from drivers.studies.ladder import RuleResult
 from drivers.studies.steps import StepsResult
-from matlib.card import Card
+from drivers.subject import Subject
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -21,17 +21,17 @@ if TYPE_CHECKING:
 __all__ = ["steps_data", "steps_figure", "steps_tables"]
 
 
-def steps_data(result: StepsResult, card: Card) -> dict[str, Any]:
+def steps_data(result: StepsResult, card: Subject) -> dict[str, Any]:
     """The study as plain data, SI units."""
     recommended = result.recommended
     blame = result.blame
     return envelope(
         "steps",
         result.holds,
-        card=card.document.name,
+        **subject_data(card),
         path=result.path.name,
         tolerance=result.tolerance,
-        reference={"relative_bound": result.reference_bound, "estimated": result.estimated},
+        reference={"relative_bound": result.reference_bound, "estimated": result.estimated, "basis": result.basis},
         own={
             "shift_rule": result.rule.shift_rule,
             "recursion": result.rule.recursion,
@@ -78,7 +78,7 @@ def _rule_data(result: RuleResult) -> dict[str, Any]:
     }
 
 
-def steps_tables(result: StepsResult, card: Card) -> list[RenderableType]:
+def steps_tables(result: StepsResult, card: Subject) -> list[RenderableType]:
     """Verdict, what the error comes from, recommended increments, and the ladder of every rule."""
     own, tolerance = result.own, percent(result.tolerance)
     at = place_text(own.at, card.temperature_unit)
@@ -86,7 +86,8 @@ def steps_tables(result: StepsResult, card: Card) -> list[RenderableType]:
         f"the path's own {result.path.increment_count} increments ({result.rule}) are off by {percent(own.relative)} of the peak "
         f"{own.quantity} at most ({own.component} at {at}); the tolerance is {tolerance}"
     )
-    bound = f"Judged on the reference solution, {'estimated' if result.estimated else 'guaranteed'} to {percent(result.reference_bound)}."
+    kind = "estimated" if result.estimated else "guaranteed"
+    bound = f"Judged on {result.basis}, {kind} to {percent(result.reference_bound)}."
     parts: list[RenderableType] = [verdict_line(result.holds, text), Text(bound)]
     if result.blame is not None:
         parts.append(Text(result.blame.sentence))
@@ -95,7 +96,7 @@ def steps_tables(result: StepsResult, card: Card) -> list[RenderableType]:
     return parts
 
 
-def _advice_table(result: StepsResult, card: Card) -> RenderableType:
+def _advice_table(result: StepsResult, card: Subject) -> RenderableType:
     recommended = result.recommended
     if recommended is None:
         return Text(
@@ -167,8 +168,8 @@ def steps_figure(result: StepsResult) -> Figure:
         axes.loglog(
             [rung.increments for rung in rule.errors],
             [max(rung.relative_error, 1e-16) for rung in rule.errors],
-            color=COLOURS[rule.rule.recursion],
-            linestyle=DASHES[rule.rule.recursion],
+            color=COLOURS.get(rule.rule.recursion, "#1b3a5c"),
+            linestyle=DASHES.get(rule.rule.recursion, "-"),
             marker=MARKS[shift_rules.index(rule.rule.shift_rule) % len(MARKS)],
             markersize=4,
             linewidth=1.2,

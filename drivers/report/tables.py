@@ -12,6 +12,7 @@ from drivers.difference import Where
 from drivers.history import History
 from drivers.studies.compare import Comparison, PathComparison
 from drivers.studies.slips import Slip
+from drivers.subject import Subject
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
 from matlib.card_conversion import ConvertedCard
@@ -148,7 +149,7 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
     return [table]
 
 
-def comparison_tables(comparison: Comparison, a: Card, b: Card) -> list[RenderableType]:
+def comparison_tables(comparison: Comparison, a: Subject, b: Subject) -> list[RenderableType]:
     """Verdict, shift laws, paths: the worst first."""
     worst = comparison.worst
     return [
@@ -195,7 +196,11 @@ def _bound_text(comparison: Comparison) -> str:
     judged = [result for result in comparison.paths if not result.identical and result.difference is not None]
     largest = max((result.bound for result in judged), default=0.0)
     kind = "estimated" if any(result.estimated for result in judged) else "guaranteed"
-    return f"Differences are between reference solutions, {kind} to {percent(largest)}."
+    bound = f", {kind} to {percent(largest)}" if largest > 0.0 else ""
+    text = f"Differences are between {comparison.basis}{bound}."
+    if comparison.judges_increments and comparison.same == "different":
+        text += " Part of them may come from the increments; steps on the routine and the path tells how much."
+    return text
 
 
 def _worst_first(paths: Iterable[PathComparison]) -> list[PathComparison]:
@@ -207,7 +212,7 @@ def place_text(at: Where, unit: Unit) -> str:
     return f"{at.segment}, {time_text(at.time)}, {temperature_text(at.temperature, unit)}"
 
 
-def _paths_table(paths: Sequence[PathComparison], a: Card) -> Table:
+def _paths_table(paths: Sequence[PathComparison], a: Subject) -> Table:
     columns = [("path", "left"), ("difference", "right"), ("in", "left"), ("largest at", "left"), ("", "left")]
     table = plain_table("", columns)
     for column in table.columns[:3]:

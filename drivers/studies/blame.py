@@ -9,8 +9,9 @@ import numpy as np
 
 from drivers.difference import Difference
 from drivers.path import segment_blocks
-from drivers.studies.trial import Counts, Rule, Trials
+from drivers.studies.trial import OWN, Counts, Rule, Trials
 from matlib.arrays import FloatArray
+from matlib.material import Material
 from matlib.recursion import find_recursion
 
 __all__ = ["Blame", "find_blame"]
@@ -24,6 +25,9 @@ STILL_CARRIES = 0.01
 
 LARGE_R = 3.0
 
+EXACT = Rule(shift_rule="integrated", recursion="exponential")
+"""Its clock tells the size of an increment."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Blame:
@@ -35,12 +39,12 @@ class Blame:
         Label of the segment whose own increments make the largest part of the error.
     share : float
         Error that this segment alone makes, as a fraction of the peak.
-    cause : {"clock", "recursion"}
-        Whether the reduced time of increments is off, or what is done with it.
-    decades : float
-        Largest change of log10 a_T over one of its increments.
-    ratio : float
-        Largest reduced time of an increment over the shortest relaxation time that still carries stress.
+    cause : {"clock", "recursion", "its own"}
+        Whether the reduced time of increments is off, or what is done with it; a routine that is not ours does not tell.
+    decades : float or None
+        Largest change of log10 a_T over one of its increments; None where no material is known.
+    ratio : float or None
+        Largest reduced time of an increment over the shortest relaxation time that still carries stress; None likewise.
     sentence : str
         All of it in words.
     """
@@ -48,8 +52,8 @@ class Blame:
     segment: str
     share: float
     cause: str
-    decades: float
-    ratio: float
+    decades: float | None
+    ratio: float | None
     sentence: str
 
 
@@ -79,19 +83,20 @@ def find_blame(trials: Trials, rule: Rule, counts: Counts, own: Difference) -> B
         moving = bool(np.any(segments[k].durations > 0.0))
         errors.append(trials.difference(rule, mixed, at=counts).relative if moving else 0.0)
     worst = int(np.argmax(errors))
-    exact = Rule(shift_rule="integrated", recursion=rule.recursion)
+    label, share, material = segments[worst].label, errors[worst], trials.runner.material
+    if material is None:
+        sentence = f"Segment {label!r} makes most of the error."
+        return Blame(segment=label, share=share, cause="its own", decades=None, ratio=None, sentence=sentence)
+    cause = "its own" if rule == OWN else _cause(trials, rule, counts, own)
+    decades, ratio, tau = _sizes(trials, EXACT if rule == OWN else rule, material, counts, worst)
+    sentence = _sentence(label, rule, cause, decades, ratio, tau)
+    return Blame(segment=label, share=share, cause=cause, decades=decades, ratio=ratio, sentence=sentence)
+
+
+def _cause(trials: Trials, rule: Rule, counts: Counts, own: Difference) -> str:
+    exact = Rule(shift_rule=EXACT.shift_rule, recursion=rule.recursion)
     with_clock = own.relative if rule == exact else trials.difference(exact, counts).relative
-    cause = "clock" if with_clock < (1.0 - CLOCK_SHARE) * own.relative else "recursion"
-    decades, ratio, tau = _sizes(trials, rule, counts, worst)
-    label = segments[worst].label
-    return Blame(
-        segment=label,
-        share=errors[worst],
-        cause=cause,
-        decades=decades,
-        ratio=ratio,
-        sentence=_sentence(label, rule, cause, decades, ratio, tau),
-    )
+    return "clock" if with_clock < (1.0 - CLOCK_SHARE) * own.relative else "recursion"
 
 
 def _sentence(label: str, rule: Rule, cause: str, decades: float, ratio: float, tau: float) -> str:
@@ -100,17 +105,17 @@ def _sentence(label: str, rule: Rule, cause: str, decades: float, ratio: float, 
             f"Segment {label!r} makes most of the error: a_T changes by up to {decades:.2g} decades over one of its increments, more "
             f"than shift rule {rule.shift_rule} can follow."
         )
-    recursion = find_recursion(rule.recursion)
-    limit = "" if recursion.right_limit or ratio < LARGE_R else f"; {recursion.name} fails there: {recursion.large_r}"
+    limit = ""
+    if cause == "recursion" and ratio >= LARGE_R and not find_recursion(rule.recursion).right_limit:
+        limit = f"; {rule.recursion} fails there: {find_recursion(rule.recursion).large_r}"
     return (
         f"Segment {label!r} makes most of the error: an increment spans up to {ratio:.2g} times the shortest relaxation time that still "
         f"carries stress ({tau:.2g} s at T_ref), and a_T changes by up to {decades:.2g} decades over one{limit}."
     )
 
 
-def _sizes(trials: Trials, rule: Rule, counts: Counts, worst: int) -> tuple[float, float, float]:
+def _sizes(trials: Trials, rule: Rule, material: Material, counts: Counts, worst: int) -> tuple[float, float, float]:
     """Largest change of log10 a_T over an increment of a segment; largest dxi/tau and that tau, of terms that carry stress."""
-    material = trials.material
     routine = rule.routine(material)
     path = trials.path.with_increments(counts)
     T, decades, ratio, which = path.start_temperature, 0.0, 0.0, 0.0

@@ -101,12 +101,26 @@ class PathComparison:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Comparison:
-    """Verdict over all paths."""
+    """Verdict over all paths.
+
+    Parameters
+    ----------
+    same : Same
+    tolerance : float
+    shift : ShiftDifference
+    paths : tuple of PathComparison
+    basis : str
+        What the responses are that differ, in words.
+    judges_increments : bool
+        Whether the increments of the paths, too, have a part in a difference.
+    """
 
     same: Same
     tolerance: float
     shift: ShiftDifference
     paths: tuple[PathComparison, ...]
+    basis: str = "reference solutions"
+    judges_increments: bool = False
 
     @property
     def holds(self) -> bool:
@@ -246,6 +260,13 @@ def _bound(one: Reference, other: Reference) -> float:
     return max(shares, default=0.0)
 
 
+def verdict(results: Sequence[PathComparison]) -> Same:
+    """Over all paths, the worst counts."""
+    if all(result.identical for result in results):
+        return "identical"
+    return "within tolerance" if all(result.holds for result in results) else "different"
+
+
 def compare(
     a: Material,
     b: Material,
@@ -290,10 +311,4 @@ def compare(
         shift = ShiftDifference(decades=decades, temperature=at)
     except ShiftRangeError as error:
         shift = ShiftDifference(decades=None, temperature=None, reason=str(error))
-    if all(result.identical for result in results):
-        same: Same = "identical"
-    elif all(result.holds for result in results):
-        same = "within tolerance"
-    else:
-        same = "different"
-    return Comparison(same=same, tolerance=tolerance, shift=shift, paths=tuple(results))
+    return Comparison(same=verdict(results), tolerance=tolerance, shift=shift, paths=tuple(results))

@@ -78,7 +78,7 @@ def recommend(trials: Trials, rule: Rule, tolerance: float) -> Recommendation | 
     tolerance have ``n`` in proportion to ``(C / rounds)**(1/(p+1))``; the size follows from the tolerance, and is corrected by what
     runs show.
     """
-    order = 2.0 if _second_order(rule) else 1.0
+    order = trials.runner.order(rule)
     shares = _shares(trials, rule)
     rounds = np.bincount([index for index, _, _ in trials.path.unrolled()], minlength=len(shares)).astype(np.float64)
     weights = (np.maximum(shares, 1e-6 * max(shares.max(), 1e-300)) * PROBE**order / rounds) ** (1.0 / (order + 1.0))
@@ -118,10 +118,6 @@ def recommend(trials: Trials, rule: Rule, tolerance: float) -> Recommendation | 
     return Recommendation(
         advice=advice, counts=counts, increments=total_increments(trials.path, counts), relative_error=error
     )
-
-
-def _second_order(rule: Rule) -> bool:
-    return rule.recursion != "backward-euler" and rule.shift_rule not in ("start", "end")
 
 
 def _shares(trials: Trials, rule: Rule) -> np.ndarray:

@@ -11,7 +11,7 @@ from drivers.path import Path
 from drivers.studies.blame import Blame, find_blame
 from drivers.studies.ladder import RuleResult, climb
 from drivers.studies.recommend import Recommendation, recommend
-from drivers.studies.trial import Rule, Trials
+from drivers.studies.trial import CardRunner, Rule, Runner, Trials
 from matlib.errors import ParameterError
 from matlib.material import Material
 
@@ -43,6 +43,8 @@ class StepsResult:
         None where no count within the limit meets the tolerance.
     blame : Blame or None
         Which segment the own error comes from, and why; None where there is no error to speak of.
+    basis : str
+        What the errors are judged on, in words.
     """
 
     path: Path
@@ -54,6 +56,7 @@ class StepsResult:
     rules: tuple[RuleResult, ...]
     recommended: Recommendation | None
     blame: Blame | None
+    basis: str = "the reference solution"
 
     @property
     def holds(self) -> bool:
@@ -62,7 +65,7 @@ class StepsResult:
 
 
 def steps(
-    material: Material,
+    subject: Material | Runner,
     path: Path,
     *,
     tolerance: float,
@@ -74,7 +77,8 @@ def steps(
 
     Parameters
     ----------
-    material : Material
+    subject : Material or Runner
+        What a card says, or what is run in its place.
     path : Path
     tolerance : float
         Largest error that passes, as a fraction of the path's peak, from `TIGHTEST` to 1.
@@ -99,7 +103,8 @@ def steps(
     if not (math.isfinite(tolerance) and TIGHTEST <= tolerance <= 1.0):
         raise ParameterError("tolerance", f"from {TIGHTEST:g} to 1", tolerance)
     accuracy = min(1e-7, max(1e-10, 0.01 * tolerance))
-    trials = Trials(material=material, path=path, accuracy=accuracy, done=progress)
+    runner = subject if isinstance(subject, Runner) else CardRunner(material=subject)
+    trials = Trials(runner=runner, path=path, accuracy=accuracy, done=progress)
     counts = tuple(segment.increments for segment in path.segments)
     own = trials.difference(rule, counts)
     recommended = recommend(trials, rule, tolerance)
@@ -116,4 +121,5 @@ def steps(
         rules=climbed,
         recommended=recommended,
         blame=blame,
+        basis=runner.basis,
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections.abc import Callable
 from dataclasses import dataclass, field
 
@@ -15,7 +16,7 @@ from matlib.recursion import find_recursion
 from matlib.shift import find_shift_rule
 from matlib.viscoelastic import LinearViscoelastic
 
-__all__ = ["Rule", "Trials"]
+__all__ = ["OWN", "CardRunner", "Rule", "Runner", "Trials"]
 
 Counts = tuple[int, ...]
 
@@ -28,7 +29,7 @@ class Rule:
     recursion: str
 
     def __str__(self) -> str:
-        return f"{self.shift_rule}, {self.recursion}"
+        return f"{self.shift_rule}, {self.recursion}" if self != OWN else "its own rule"
 
     def routine(self, material: Material) -> LinearViscoelastic:
         """The built-in routine with this rule."""
@@ -37,13 +38,62 @@ class Rule:
         )
 
 
+OWN = Rule(shift_rule="its own", recursion="its own")
+"""What a routine that is not ours does; it has no other."""
+
+
+class Runner(ABC):
+    """What is run along the paths of a study, and what it is judged against."""
+
+    @property
+    @abstractmethod
+    def material(self) -> Material | None:
+        """The material that it is meant to be, where that is known."""
+
+    @property
+    def basis(self) -> str:
+        """What `truth` is, in words."""
+        return "the reference solution"
+
+    @abstractmethod
+    def order(self, rule: Rule) -> float:
+        """Order of convergence to expect of a rule."""
+
+    @abstractmethod
+    def run(self, rule: Rule, path: Path) -> History:
+        """Response with the increments of the path."""
+
+    @abstractmethod
+    def truth(self, path: Path, accuracy: float) -> Reference:
+        """What the response should be at the increment ends of the path."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class CardRunner(Runner):
+    """The built-in routine with any rule, judged against the reference solution."""
+
+    material: Material
+
+    def order(self, rule: Rule) -> float:
+        """Second, unless one half of the rule is first."""
+        return 1.0 if rule.recursion == "backward-euler" or rule.shift_rule in ("start", "end") else 2.0
+
+    def run(self, rule: Rule, path: Path) -> History:
+        """Response with the increments of the path."""
+        return drive(rule.routine(self.material), path)
+
+    def truth(self, path: Path, accuracy: float) -> Reference:
+        """The reference solution."""
+        return solve(self.material, path, accuracy=accuracy)
+
+
 @dataclass(slots=True, kw_only=True, eq=False)
 class Trials:
-    """Judge runs of a path; reference solutions are kept.
+    """Judge runs of a path; what they are judged against is kept.
 
     Parameters
     ----------
-    material : Material
+    runner : Runner
     path : Path
     accuracy : float
         Of the reference solutions.
@@ -51,7 +101,7 @@ class Trials:
         Called with 1 after each run.
     """
 
-    material: Material
+    runner: Runner
     path: Path
     accuracy: float
     done: Callable[[int], None] | None = None
@@ -61,12 +111,12 @@ class Trials:
         """Reference solution at the increment ends of the path with these counts."""
         if counts not in self.references:
             path = self.path.with_increments(counts)
-            self.references[counts] = solve(self.material, path, accuracy=self.accuracy)
+            self.references[counts] = self.runner.truth(path, self.accuracy)
         return self.references[counts]
 
     def run(self, rule: Rule, counts: Counts) -> History:
         """Response with these increments."""
-        history = drive(rule.routine(self.material), self.path.with_increments(counts))
+        history = self.runner.run(rule, self.path.with_increments(counts))
         if self.done is not None:
             self.done(1)
         return history
