@@ -94,9 +94,10 @@ def paths_window(paths: Sequence[Path]) -> Window:
     """Window that paths cover: their temperatures, and times from a thousandth of their shortest segment to their longest run."""
     ranges = [path.temperature_range for path in paths]
     durations = [float(d) for path in paths for s in path.segments for d in s.durations if d > 0.0] or [1.0]
+    shortest, longest = 1e-3 * min(durations), max(*durations, *(path.duration for path in paths))
     return Window(
         temperature=(min(low for low, _ in ranges), max(high for _, high in ranges)),
-        time=(1e-3 * min(durations), max(*durations, *(path.duration for path in paths))),
+        time=(min(max(shortest, SHORTEST), LONGEST), min(max(longest, SHORTEST), LONGEST)),
         source="the paths given",
     )
 

@@ -6,12 +6,12 @@ from pathlib import Path as FilePath
 from typing import Annotated, Any, Literal
 
 import numpy as np
-from pydantic import Field
+from pydantic import AfterValidator, Field
 
 from drivers.path import MODES, Cycle, Mode, Path, Segment
 from drivers.record_file import read_record
 from matlib.arrays import BoolArray, FloatArray
-from matlib.card_schema import Number, StressUnit, TemperatureUnit, TimeUnit
+from matlib.card_schema import Number, StressUnit, TemperatureUnit, TimeUnit, not_lost
 from matlib.documents import Document, read_toml, shown, validated
 from matlib.errors import Fault, FaultyInputError
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, mandel_from_strain, mandel_from_stress
@@ -21,8 +21,8 @@ __all__ = ["read_path"]
 
 LARGEST_RUN = 200_000_000  # increments
 
-Strain = Annotated[float, Field(ge=-1e3, le=1e3)]
-Duration = Annotated[float, Field(ge=0.0, le=1e30, description="a duration >= 0")]
+Strain = Annotated[float, Field(ge=-1e3, le=1e3), AfterValidator(not_lost)]
+Duration = Annotated[float, Field(ge=0.0, le=1e30, description="a duration >= 0"), AfterValidator(not_lost)]
 
 
 class UnitsTable(Document):

@@ -11,6 +11,7 @@ from pathlib import Path as FilePath
 import numpy as np
 
 from matlib.arrays import FloatArray
+from matlib.card_schema import SMALLEST_NUMBER
 from matlib.documents import read_text, shown
 from matlib.errors import Fault, FileError, UnknownNameError
 from matlib.units import STRESS, TEMPERATURE, Unit, find_unit
@@ -134,7 +135,7 @@ def _numbers(key: str, index: int, rows: list[tuple[int, list[str]]]) -> tuple[F
         except ValueError:
             value = math.nan
         if abs(value) <= largest:
-            values[k] = value
+            values[k] = value if abs(value) >= SMALLEST_NUMBER else 0.0  # a measured 1e-300 is a zero
         else:
             expected = f"a number from {-largest:g} to {largest:g}" if math.isfinite(value) else "a finite number"
             faults.append(Fault(key=f"line {line}, {key}", found=shown(cell), expected=expected))

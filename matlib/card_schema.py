@@ -4,17 +4,40 @@ from __future__ import annotations
 
 from typing import Annotated, Any, Literal
 
-from pydantic import Field
+from pydantic import AfterValidator, Field
 
 from matlib.documents import Document
 from matlib.units import ENERGY, STRESS, TEMPERATURE, TIME
 
-__all__ = ["LARGEST_NUMBER", "CardDocument", "Number", "Pair", "UnitsTable"]
+__all__ = [
+    "LARGEST_NUMBER",
+    "SMALLEST_NUMBER",
+    "CardDocument",
+    "Coefficient",
+    "Number",
+    "Pair",
+    "UnitsTable",
+    "not_lost",
+]
 
 LARGEST_NUMBER = 1e60
 """Larger than any number of the trade in any unit, small enough that no product of a few of them overflows."""
 
-Number = Annotated[float, Field(ge=-LARGEST_NUMBER, le=LARGEST_NUMBER)]
+SMALLEST_NUMBER = 1e-60
+"""Smaller than any number of the trade but 0, large enough that no product of a few of them underflows."""
+
+
+def not_lost(value: float) -> float:
+    """Refuse a number that is not 0 and yet too small to reckon with."""
+    if value != 0.0 and abs(value) < SMALLEST_NUMBER:
+        raise ValueError(f"0, or a number of at least {SMALLEST_NUMBER:g} in size")
+    return value
+
+
+Coefficient = Annotated[float, Field(ge=-LARGEST_NUMBER, le=LARGEST_NUMBER)]
+"""Of a sum, where it may be as small as it likes."""
+
+Number = Annotated[Coefficient, AfterValidator(not_lost)]
 Pair = Annotated[list[Number], Field(min_length=2, max_length=2)]
 Terms = Annotated[list[Pair], Field(min_length=1, max_length=1000)]
 

@@ -8,7 +8,7 @@ from typing import Annotated, Any, ClassVar, Literal
 from pydantic import Field, model_validator
 
 from matlib.arrays import frozen
-from matlib.card_schema import EnergyUnit, Number, Pair
+from matlib.card_schema import Coefficient, EnergyUnit, Number, Pair
 from matlib.documents import ContradictionError, Document, shown, validated
 from matlib.errors import Fault, FaultyInputError, ParameterError, UnknownNameError
 from matlib.shift import (
@@ -118,7 +118,7 @@ class PolynomialTable(LawTable):
 
     law: Literal["polynomial"]
     T_ref: Number = REFERENCE
-    coefficients: Annotated[list[Number], Field(min_length=1, max_length=12)] = Field(
+    coefficients: Annotated[list[Coefficient], Field(min_length=1, max_length=12)] = Field(
         description="a list of coefficients of (T-T_ref), (T-T_ref)^2, ..."
     )
 

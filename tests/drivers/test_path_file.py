@@ -173,6 +173,8 @@ def test_all_faults_of_a_file_are_told_at_once_and_by_their_keys(write):
         ("temperature = 40.0", "temperature = -300.0", "segment[1].temperature"),
         ("duration = 2.0", "duration = nan", "segment[1].duration"),
         ("duration = 2.0", "duration = 1e31", "segment[1].duration"),
+        ("duration = 2.0", "duration = 1e-61", "segment[1].duration"),
+        ("strain = 0.01", "strain = -1e-300", "segment[1].strain"),
         ("strain = 0.01", "strain = 1e4", "segment[1].strain"),
         ("strain = 0.01", "strain = true", "segment[1].strain"),
         ("increments = 7", "increments = 7.5", "segment[1].increments"),

@@ -47,6 +47,10 @@ def test_columns_without_a_unit_take_the_one_of_the_path(record):
     assert record("time,temperature,stress\n1,30,5\n2,31,6\n", "MPa").value.tolist() == [5e6, 6e6]
 
 
+def test_a_number_too_small_to_reckon_with_is_a_zero(record):
+    assert record("time,temperature,strain\n0,20,1e-300\n1,20,-1e-59\n").value.tolist() == [0.0, -1e-59]
+
+
 def test_blank_lines_spaces_and_a_byte_order_mark_are_no_fault(record):
     got = record("\ufefftime , temperature [degC] , strain [-]\n\n 0 , 20 , 0 \n 1 , 21 , 1e-3 \n\n")
     assert got.value.tolist() == [0.0, 1e-3]

@@ -3,7 +3,17 @@ from typing import Annotated, Literal, get_args, get_origin
 import pytest
 from pydantic import TypeAdapter, ValidationError
 
-from matlib.card_schema import LARGEST_NUMBER, EnergyUnit, Number, Pair, StressUnit, TemperatureUnit, Terms, TimeUnit
+from matlib.card_schema import (
+    LARGEST_NUMBER,
+    SMALLEST_NUMBER,
+    EnergyUnit,
+    Number,
+    Pair,
+    StressUnit,
+    TemperatureUnit,
+    Terms,
+    TimeUnit,
+)
 from matlib.units import ENERGY, STRESS, TEMPERATURE, TIME
 
 
@@ -18,7 +28,7 @@ def test_the_units_that_a_card_may_name_are_the_units_there_are(annotation, tabl
     assert get_args(literal) == tuple(table)
 
 
-@pytest.mark.parametrize("value", [0.0, -LARGEST_NUMBER, LARGEST_NUMBER, 3])
+@pytest.mark.parametrize("value", [0.0, -LARGEST_NUMBER, LARGEST_NUMBER, SMALLEST_NUMBER, -SMALLEST_NUMBER, 3])
 def test_a_number_may_be_of_any_size_of_the_trade(value):
     assert TypeAdapter(Number).validate_python(value) == value
 
@@ -26,6 +36,12 @@ def test_a_number_may_be_of_any_size_of_the_trade(value):
 @pytest.mark.parametrize("value", [1.1e60, -1.1e60, 10**70])
 def test_a_number_that_would_overflow_is_refused(value):
     with pytest.raises(ValidationError, match="than or equal to"):
+        TypeAdapter(Number).validate_python(value)
+
+
+@pytest.mark.parametrize("value", [9e-61, -9e-61, 5e-324])
+def test_a_number_that_would_underflow_is_refused(value):
+    with pytest.raises(ValidationError, match="0, or a number of at least 1e-60 in size"):
         TypeAdapter(Number).validate_python(value)
 
 
