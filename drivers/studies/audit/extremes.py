@@ -6,6 +6,7 @@ import numpy as np
 
 from drivers.studies.audit.subject import ROUNDING, STRAIN, CheckResult, Subject, increment, take
 from matlib.arrays import FloatArray
+from matlib.routine import Update
 from matlib.tensors import DEVIATORIC, IDENTITY
 
 __all__ = ["long_increment", "temperature_jump", "zero_increment"]
@@ -13,6 +14,7 @@ __all__ = ["long_increment", "temperature_jump", "zero_increment"]
 LONG_LIMIT = 1e-6
 """Relative: a hold of 1e6 relaxation times and more has forgotten all that relaxes, to 1e-6 even at a gain or decay of 1/r."""
 
+HOLDS = 49
 LONG = (1e7, 1e12, 1e20, 1e30)
 
 
@@ -63,6 +65,13 @@ def long_increment(subject: Subject) -> CheckResult:
         error = float(np.abs(held.stress - truth).max()) / (float(np.abs(jump.stress).max()) or 1.0)
         if error > worst:
             worst, at = error, seconds
+    rise, rise_at = _rise(subject, jump, strain)
+    if rise > max(worst, LONG_LIMIT):
+        message = (
+            f"Held in one increment of dt, the stress rises again by {100.0 * rise:.3g} % of the jump's as dt grows past {rise_at:.3g} s: "
+            "look at the sign and the size of the decay for r = dxi/tau about 1."
+        )
+        return CheckResult(id="long-increment", holds=False, measured=rise, limit=LONG_LIMIT, message=message)
     holds = worst <= LONG_LIMIT
     message = "Held for up to 1e30 s in one increment, the stress is the long-term one."
     if not holds:
@@ -71,6 +80,19 @@ def long_increment(subject: Subject) -> CheckResult:
             "one: look at the decay for large dt (it has to go to 0: not to -1, which rings, and not beyond)."
         )
     return CheckResult(id="long-increment", holds=holds, measured=worst, limit=LONG_LIMIT, message=message)
+
+
+def _rise(subject: Subject, jump: Update, strain: FloatArray) -> tuple[float, float]:
+    """Largest rise of the stress of a hold in one increment as the increment gets longer, as a fraction of the jump's stress."""
+    T, direction = subject.T, jump.stress / (float(np.linalg.norm(jump.stress)) or 1.0)
+    durations = np.minimum(np.geomspace(1e-2 * subject.shortest, 1e2 * _scaled(subject, 1.0), HOLDS), 1e30)
+    held = [
+        float(subject.routine.update(increment(float(dt), (T, T), strain, strain), jump.memory).stress @ direction)
+        for dt in durations
+    ]
+    rises = np.diff(held) / (float(np.linalg.norm(jump.stress)) or 1.0)
+    k = int(rises.argmax())
+    return float(rises[k]), float(durations[k])
 
 
 def _scaled(subject: Subject, factor: float) -> float:
