@@ -73,7 +73,7 @@ def constants(card: Card) -> dict[str, Constant]:
     Returns
     -------
     found : dict
-        By key. Names, notes and the service window are no constants.
+        By key. Names, notes and the service window are no constants, nor is a measured range that the law goes beyond.
     """
     tables = plain(card.document)
     found = [*_elastic(tables), *_prony(tables), *_law(tables["shift"], ("shift",))]
@@ -106,7 +106,10 @@ def _prony(tables: dict[str, Any]) -> Iterator[Constant]:
 
 def _law(table: Mapping[str, Any], place: tuple[str, ...]) -> Iterator[Constant]:
     prefix = ".".join(place)
+    beyond = table.get("outside", "extrapolate") != "extrapolate"
     for name, value in table.items():
+        if name in ("measured", "outside") and not beyond:
+            continue
         key, here = f"{prefix}.{name}", (*place, name)
         if isinstance(value, Mapping):
             yield from _law(value, here)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import io
+from collections.abc import Iterable, Mapping
 from pathlib import Path as FilePath
 from typing import Any
+
+from rich.console import Console, RenderableType
 
 from drivers.baseline_file import Baseline, write_baseline
 from drivers.battery import battery, card_window
@@ -58,3 +61,12 @@ def written(folder: FilePath, name: str, baseline: Baseline, changes: Mapping[st
     card = folder / f"{name}.card.toml"
     card.write_text(toml(changed(changes or {}, SOUND)), encoding="utf-8")
     return card
+
+
+def shown(tables: Iterable[RenderableType]) -> str:
+    """Tables as a wide terminal shows them, white space made single."""
+    console = Console(file=io.StringIO(), width=400, highlight=False, markup=False, emoji=False)
+    for table in tables:
+        console.print(table)
+    assert isinstance(console.file, io.StringIO)
+    return " ".join(console.file.getvalue().split())
