@@ -102,7 +102,7 @@ def drive_figure(history: History, card: Subject, path: Path) -> Figure:
 
 
 def comparison_figure(comparison: Comparison, a: Subject, b: Subject) -> Figure:
-    """Both responses and their difference on the path that differs most, and both shift laws.
+    """Both responses and their difference on the path that differs most, and the shift laws of two cards.
 
     Parameters
     ----------
@@ -115,19 +115,12 @@ def comparison_figure(comparison: Comparison, a: Subject, b: Subject) -> Figure:
     """
     worst = comparison.worst
     figure = _figure(9.0, 6.5)
-    grid = figure.add_gridspec(2, 2)
-    upper, lower, right = (
-        figure.add_subplot(grid[0, 0]),
-        figure.add_subplot(grid[1, 0]),
-        figure.add_subplot(grid[:, 1]),
-    )
+    grid = figure.add_gridspec(2, 2 if isinstance(a, Card) and isinstance(b, Card) else 1)
+    upper, lower = figure.add_subplot(grid[0, 0]), figure.add_subplot(grid[1, 0])
     _draw_responses(upper, lower, worst, a)
     upper.set_title(f"worst path: {worst.path.name}", loc="left", fontsize=10, fontweight="bold", parse_math=False)
-    if isinstance(a, Card) and isinstance(b, Card):
-        _draw_shift_laws(right, a, b)
-    else:
-        right.set_axis_off()
-        right.text(0.5, 0.5, "shift laws: a routine does not tell its own", ha="center", transform=right.transAxes)
+    if isinstance(a, Card) and isinstance(b, Card):  # a routine does not tell its shift law
+        _draw_shift_laws(figure.add_subplot(grid[:, 1]), a, b)
     names = f"A (solid): {a.name}\nB (dashed): {b.name}"
     figure.suptitle(f"{comparison.same}\n{names}", fontsize=10, x=0.01, ha="left", parse_math=False)
     return figure
