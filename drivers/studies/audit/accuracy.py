@@ -18,6 +18,7 @@ from matlib.prony import PronySeries
 __all__ = ["order", "path", "relaxation"]
 
 HOLD = 96
+MOST_DOUBLINGS = 4
 ORDER_SLACK = 0.25
 """How far an observed order may fall short of the claimed one; tests of the study itself observe orders within 0.1."""
 
@@ -115,15 +116,25 @@ def _relaxation_hint(
 
 
 def _judged(subject: Subject, one: Path) -> tuple[float, float, str]:
-    """Error of a battery path at twice its increments, its limit, and where it arises."""
+    """Error of a battery path, its limit, and where it arises.
+
+    Increments are doubled until the error is within what the routine's own change stands for, or `MOST_DOUBLINGS` is reached: a right
+    routine gets there once its steps are small enough, a wrong one never does.
+    """
     assert subject.material is not None
     counts = tuple(s.increments for s in one.segments)
-    coarse, fine = drive(subject.routine, one), drive(subject.routine, one.refined(2))
-    rows, own = shared_rows(one, counts, tuple(2 * n for n in counts))
-    coarse, fine = coarse.taken(rows), fine.taken(own)
     truth = solve(subject.material, one)
-    difference = largest_difference(truth.history.taken(rows), fine)
-    limit = SAFETY * _own_error(coarse, fine, subject.order) + truth.relative_bound + ROUNDING
+    coarse = drive(subject.routine, one)
+    for doubling in range(1, MOST_DOUBLINGS + 1):
+        factor = 2**doubling
+        rows, own = shared_rows(one, counts, tuple(factor * n for n in counts))
+        fine = drive(subject.routine, one.refined(factor)).taken(own)
+        coarse = coarse.taken(rows)
+        difference = largest_difference(truth.history.taken(rows), fine)
+        limit = SAFETY * _own_error(coarse, fine, subject.order) + truth.relative_bound + ROUNDING
+        if difference.relative <= limit:
+            break
+        coarse = fine
     at = difference.at
     where = f"{difference.component} in segment {at.segment!r} at {at.temperature:.5g} K"
     return difference.relative, limit, where

@@ -49,7 +49,7 @@ FAULTS = (
         ),
         ("relaxation", "isotropy", "tangent"),
         "engineering",
-    ),  # fmt: skip
+    ),
     Fault(
         "shear strain halved twice",
         (("0.5 * (end[c] - start[c]);", "0.25 * (end[c] - start[c]);"),),
@@ -218,7 +218,7 @@ FAULTS = (
         ((RETURN, "    if (step->time[1] - step->time[0] > 1e18) for (volatile int k = 0;; k++);\n" + RETURN),),
         ("long-increment",),
         "hang",
-    ),  # fmt: skip
+    ),
     Fault(
         "write beyond memory",
         ((RETURN, "    memory_end[n_memory] = 1.0;\n" + RETURN),),
