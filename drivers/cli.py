@@ -23,6 +23,8 @@ app = typer.Typer(
     no_args_is_help=False,
 )
 
+INTERRUPTED = 130
+
 CardFile = Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml.")]
 CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card files, *.card.toml, or folders of them.")]
 PathFile = Annotated[str, typer.Argument(metavar="PATH", help="A path file, *.path.toml.")]
@@ -338,13 +340,15 @@ def main(arguments: list[str] | None = None) -> int:
     command = typer.main.get_command(app)
     try:
         status = command.main(arguments, prog_name="cardproof", standalone_mode=False)
+        if status == INTERRUPTED:  # typer's own answer to an interrupt from the keyboard, which says nothing
+            raise KeyboardInterrupt
         return status if isinstance(status, int) else 0
     except TyperException as error:
         return _refused([f"cardproof: {error.format_message()}"])
     except CardproofError as error:
         return _refused(error.lines())
     except (KeyboardInterrupt, typer.Abort):
-        return _refused(["cardproof: interrupted"], 130)
+        return _refused(["cardproof: interrupted"], INTERRUPTED)
     except SystemExit:  # never for the usage, which is an exception here: what is below us leaves so on a broken pipe
         return 141
     except OSError as error:
