@@ -24,6 +24,7 @@ __all__ = ["run"]
 
 RUNS_OF_A_RULE = 10
 OTHER_RUNS = 30
+OWN_SHARE = 0.01  # of the tolerance: how well a routine's own finest run is settled
 RUNS_OF_ROUTINE = RUNS_OF_A_RULE + OTHER_RUNS
 
 
@@ -68,7 +69,9 @@ def run(
 def _of_routine(described: RoutineFile, path: Path, tolerance: float, plot: str | None, json_file: str | None) -> int:
     material = None if described.card is None else described.card.material()
     with ForeignRoutine(described) as routine, progress(f"increments of {path.name}", RUNS_OF_ROUTINE) as advance:
-        runner = RoutineRunner(routine=routine, claimed_order=routine.order, material=material)
+        runner = RoutineRunner(
+            routine=routine, claimed_order=routine.order, material=material, own_accuracy=OWN_SHARE * tolerance
+        )
         result = steps(runner, path, tolerance=tolerance, rule=OWN, rules=[OWN], progress=advance)
     return _hand_over(result, described, plot, json_file)
 

@@ -35,11 +35,14 @@ class RoutineRunner(Runner):
         The order of convergence that it claims.
     material : Material or None
         The material that it is meant to be.
+    own_accuracy : float
+        How well, as a fraction of the peak, its own finest run has to be settled where there is no material.
     """
 
     routine: Routine
     claimed_order: float
     material: Material | None
+    own_accuracy: float = 1e-4
 
     @property
     def basis(self) -> str:
@@ -69,7 +72,7 @@ class RoutineRunner(Runner):
             factor *= 2
             fine = self._rows(path, factor)
             left = 2.0 / (2.0**self.claimed_order - 1.0) * largest_difference(fine, coarse).relative
-            if left <= accuracy or path.increment_count * factor * 2 > LARGEST_RUN:
+            if left <= max(accuracy, self.own_accuracy) or path.increment_count * factor * 2 > LARGEST_RUN:
                 return _as_reference(fine, left)
             coarse = fine
 
