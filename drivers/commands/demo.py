@@ -28,7 +28,10 @@ from matlib.viscoelastic import LinearViscoelastic
 
 __all__ = ["run"]
 
-SHIPPED = ("laboratory.card.toml", "slip.card.toml", "thermal-cycles.path.toml")
+SHIPPED = (
+    *("laboratory.card.toml", "slip.card.toml", "thermal-cycles.path.toml"),
+    *("routine.c", "routine.f90", "routine.py", "c.routine.toml", "f90.routine.toml", "python.routine.toml"),
+)
 TOLERANCE = 0.01
 
 

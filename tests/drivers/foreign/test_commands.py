@@ -11,6 +11,23 @@ from drivers.foreign.replay import replay
 from tests.drivers.files import PATH
 from tests.drivers.foreign.faults import workers
 
+COOLING = """name = "clamped cooling"
+mode = "uniaxial strain"
+
+[units]
+time = "min"
+temperature = "degC"
+
+[start]
+temperature = 110.0
+
+[[segment]]
+label = "cool"
+duration = 90.0
+temperature = 23.0
+increments = 40
+"""
+
 THERMAL = PATH.replace("duration = 60.0\n", "duration = 60.0\ntemperature = 100.0\n", 1)
 
 
@@ -19,6 +36,7 @@ def here(examples, tmp_path, monkeypatch):
     """A working folder with a path, beside the examples."""
     monkeypatch.chdir(tmp_path)
     (tmp_path / "p.path.toml").write_text(THERMAL)
+    (tmp_path / "cooling.path.toml").write_text(COOLING)
     return examples
 
 
@@ -112,15 +130,15 @@ def test_compare_needs_a_path_where_no_card_is_known(run, here, tmp_path):
 
 
 def test_steps_judges_a_routine_on_the_reference_solution_of_its_card(run, here):
-    status, _, _ = run("steps", here / "c.routine.toml", "p.path.toml", "--tolerance", "0.05%", "--json", "j",
+    status, _, _ = run("steps", here / "c.routine.toml", "cooling.path.toml", "--tolerance", "0.01%", "--json", "j",
                          "--plot", "s.png")  # fmt: skip
     data = loaded("j")
     (rule,) = data["rules"]
     assert (rule["shift_rule"], rule["recursion"]) == ("its own", "its own")
     assert rule["order"] == pytest.approx(2.0, abs=0.15)  # mean-log and exponential are second order
     assert not data["reference"]["estimated"]
-    assert data["recommended_error"] <= 5e-4
-    assert status == (0 if data["own"]["relative_error"] < 5e-4 else 1)
+    assert data["recommended_error"] <= 1e-4
+    assert status == (0 if data["own"]["relative_error"] < 1e-4 else 1)
     assert data["blame"]["cause"] == "its own"
 
 
