@@ -42,7 +42,7 @@ class ForeignRoutine(BlockRoutine):
     -----
     Every method raises `RoutineFailureError` where the routine crashes, hangs, returns a code, raises, or leaves something that is no
     answer; the process is ended then, and the next call starts a new one. A context manager; a routine that is dropped, or alive when
-    Python ends, leaves no process behind either.
+    Python ends, leaves no process behind either. One call at a time: not for several threads at once.
     """
 
     def __init__(self, described: RoutineFile | str | Path) -> None:
@@ -119,7 +119,7 @@ class ForeignRoutine(BlockRoutine):
         self.close()
         document = self.described.document
         try:
-            process = Isolated(self.described.order, self.described.constants, document.time_limit)
+            process = Isolated(self.described.loading, self.described.constants, document.time_limit)
         except LostProcessError as lost:
             raise RoutineFailureError(self.described.file, lost.kind, f"while it was loaded: {lost.detail}") from None
         header, _ = process.reply

@@ -55,11 +55,12 @@ def _shared_file() -> int:
         return os.dup(file.fileno())
 
 
-def _end(process: subprocess.Popen[bytes], descriptors: tuple[int, ...]) -> None:
-    """Kill a process and all that it started in its group; close what belongs to it."""
-    with contextlib.suppress(ProcessLookupError, PermissionError):
-        os.killpg(process.pid, signal.SIGKILL)
-    process.wait()
+def _end(process: subprocess.Popen[bytes], descriptors: tuple[int, ...], owner: int) -> None:
+    """Kill a process and all that it started in its group; close what belongs to it. A fork of the owner leaves it alive."""
+    if os.getpid() == owner:
+        with contextlib.suppress(ProcessLookupError, PermissionError):
+            os.killpg(process.pid, signal.SIGKILL)
+        process.wait()
     for descriptor in descriptors:
         with contextlib.suppress(OSError):
             os.close(descriptor)
@@ -110,7 +111,9 @@ class Isolated:
         os.close(request_end)
         os.close(reply_end)
         descriptors = (self._requests, self._replies, self._shared)
-        self._finalizer = weakref.finalize(self, _end, self._process, descriptors)  # at the exit of Python, too
+        self._finalizer = weakref.finalize(
+            self, _end, self._process, descriptors, os.getpid()
+        )  # at the exit of Python, too
         os.set_blocking(self._requests, False)
         os.set_blocking(self._replies, False)
         self.reply = self.ask(order, [constants], START_LIMIT)

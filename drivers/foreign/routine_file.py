@@ -94,7 +94,7 @@ class RoutineFile:
         return TEMPERATURE["K"] if self.card is None else self.card.temperature_unit
 
     @property
-    def order(self) -> dict[str, Any]:
+    def loading(self) -> dict[str, Any]:
         """What the process of the routine has to load."""
         document = self.document
         limit = {"memory_limit": int(document.memory_limit * MIB)}

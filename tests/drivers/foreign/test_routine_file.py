@@ -29,7 +29,7 @@ def test_what_is_left_out_has_a_default(written):
     described = read_routine_file(written('library = "x.so"\nn_memory = 4\n'))
     document = described.document
     assert (described.name, document.order, document.time_limit, document.memory_limit) == ("x", 1.0, 5.0, 4096.0)
-    assert (described.order["symbol"], described.order["n_memory"]) == ("stress_update", 4)
+    assert (described.loading["symbol"], described.loading["n_memory"]) == ("stress_update", 4)
     assert described.constants.size == 0
     assert (described.stress_unit.name, described.time_unit.name, described.temperature_unit.name) == ("Pa", "s", "K")
 
@@ -38,7 +38,7 @@ def test_the_library_and_the_card_are_named_from_the_folder_of_the_file(written,
     file = written('name = "new"\nlibrary = "x.so"\nn_memory = 4\nconstants = [1, 2.5]\ncard = "a.card.toml"\n')
     monkeypatch.chdir("/")
     described = read_routine_file(file)
-    assert described.order["library"] == str(tmp_path / "x.so")
+    assert described.loading["library"] == str(tmp_path / "x.so")
     assert described.card.document.name == "resin [a]"
     assert (described.name, described.stress_unit.name, described.temperature_unit.name) == ("new", "MPa", "degC")
     assert described.constants.tolist() == [1.0, 2.5]
@@ -81,7 +81,7 @@ def test_keys_that_do_not_belong_together_are_faults(written, text, expected):
 
 def test_reading_a_file_runs_nothing(written, tmp_path):
     (tmp_path / "loud.py").write_text("raise SystemExit('run')\n")
-    assert read_routine_file(written('python = "loud:Routine"\n')).order["folder"] == str(tmp_path)
+    assert read_routine_file(written('python = "loud:Routine"\n')).loading["folder"] == str(tmp_path)
 
 
 def test_routine_files_are_told_by_their_ending():
