@@ -43,4 +43,16 @@ def quarter(inner, outer, across, around):
     }
     mesh = skfem.MeshQuad2.from_mesh(square)
     r, angle = inner + (outer - inner) * mesh.doflocs[0], 0.5 * np.pi * mesh.doflocs[1]
-    return _basis(replace(mesh, doflocs=np.array([r * np.cos(angle), r * np.sin(angle)])), skfem.ElementQuad2(), 5), sides
+    return _basis(
+        replace(mesh, doflocs=np.array([r * np.cos(angle), r * np.sin(angle)])), skfem.ElementQuad2(), 5
+    ), sides
+
+
+def radius(inner, outer, across):
+    """A radius of line elements with three nodes and two Gauss points: its basis, and the points at its sides by name."""
+    mesh = skfem.MeshLine(np.linspace(inner, outer, across + 1))
+    sides = {
+        "bore": mesh.facets_satisfying(lambda x: x[0] == inner),
+        "outside": mesh.facets_satisfying(lambda x: x[0] == outer),
+    }
+    return _basis(mesh, skfem.ElementLineP2(), 3), sides

@@ -16,11 +16,16 @@ ENOUGH = 1e-9  # residual, as a part of the largest nodal force: far above round
 CORRECTIONS = 30  # at most
 
 
-def mandel(field: skfem.DiscreteField) -> np.ndarray:
-    """Small strain of a displacement field, Mandel form, shape (6, elements, points); plane strain in two dimensions."""
+def mandel(field: skfem.DiscreteField, x: np.ndarray) -> np.ndarray:
+    """Small strain of a displacement field, Mandel form, shape (6, elements, points), at the points `x`.
+
+    Plane strain in two dimensions; in one, along the radius, plane strain about an axis: components r, hoop, axial.
+    """
     gradient = field.grad
     strain = np.zeros((6, *gradient.shape[2:]))
     d = gradient.shape[0]
+    if d == 1:
+        strain[1] = field[0] / x[0]
     for i in range(d):
         strain[i] = gradient[i, i]
     for row, (i, j) in {3: (1, 2), 4: (0, 2), 5: (0, 1)}.items():
@@ -29,14 +34,20 @@ def mandel(field: skfem.DiscreteField) -> np.ndarray:
     return strain
 
 
+def _extent(x: np.ndarray) -> np.ndarray | float:
+    """What a point counts for beside its share of the mesh: the radius (one radian of the ring) in one dimension."""
+    return x[0] if len(x) == 1 else 1.0
+
+
 @skfem.LinearForm
 def virtual_work(v, w):
-    return np.einsum("i...,i...->...", w.stress, mandel(v))
+    return _extent(w.x) * np.einsum("i...,i...->...", w.stress, mandel(v, w.x))
 
 
 @skfem.BilinearForm
 def stiffness(u, v, w):
-    return np.einsum("i...,ij...,j...->...", mandel(v), w.tangent, mandel(u))
+    stress = np.einsum("ij...,j...->i...", w.tangent, mandel(u, w.x))
+    return _extent(w.x) * np.einsum("i...,i...->...", stress, mandel(v, w.x))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -87,14 +98,20 @@ class Model:
 
     def strain_of(self, displacement: np.ndarray) -> np.ndarray:
         """Strain at every point, shape (points, 6)."""
-        return mandel(self.basis.interpolate(displacement)).reshape(6, -1).T
+        x = self.basis.global_coordinates()
+        return mandel(self.basis.interpolate(displacement), np.asarray(x)).reshape(6, -1).T
 
     def forces(self, stress: np.ndarray) -> np.ndarray:
         """What the stress of all points holds at each degree of freedom [N]."""
         return virtual_work.assemble(self.basis, stress=self._by_element(stress))
 
     def take(
-        self, start: State, duration: float, temperature: float, prescribed: np.ndarray | float, load: np.ndarray | float
+        self,
+        start: State,
+        duration: float,
+        temperature: float,
+        prescribed: np.ndarray | float,
+        load: np.ndarray | float,
     ) -> State:
         """One increment: displacements `prescribed` where fixed, `load` at all others at its end."""
         displacement, residuals = start.displacement.copy(), []
