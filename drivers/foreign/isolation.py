@@ -17,12 +17,16 @@ from typing import Any
 
 from drivers.foreign.arena import Arena
 from drivers.foreign.framing import BrokenFrameError, Frame, packed, receive
+from drivers.foreign.patience import Patience, has_ended
 from matlib.arrays import FloatArray
 
 __all__ = ["Isolated", "LostProcessError"]
 
 START_LIMIT = 60.0
 """Seconds for a process to start, and to load its routine."""
+
+DYING = 2.0
+"""Seconds that a process may take to end after it has closed its side."""
 
 _WORKER = "drivers.foreign.worker"
 _ROOT = Path(__file__).parents[2]
@@ -110,10 +114,8 @@ class Isolated:
             raise
         os.close(request_end)
         os.close(reply_end)
-        descriptors = (self._requests, self._replies, self._shared)
-        self._finalizer = weakref.finalize(
-            self, _end, self._process, descriptors, os.getpid()
-        )  # at the exit of Python, too
+        ours = (self._requests, self._replies, self._shared)
+        self._finalizer = weakref.finalize(self, _end, self._process, ours, os.getpid())  # when Python ends, too
         os.set_blocking(self._requests, False)
         os.set_blocking(self._replies, False)
         self.reply = self.ask(order, [constants], START_LIMIT)
@@ -126,7 +128,7 @@ class Isolated:
     @property
     def alive(self) -> bool:
         """Whether it can still be asked."""
-        return self._finalizer.alive and self._process.poll() is None
+        return self._finalizer.alive and not has_ended(self._process)
 
     def share(self, memory_size: int) -> None:
         """Look into the arena that the process has made."""
@@ -154,13 +156,14 @@ class Isolated:
         LostProcessError
             If the process dies, hangs or answers with something that is no message; it is ended then.
         """
-        patience = _Patience(self._time_limit if time_limit is None else time_limit, self.arena)
+        limit = self._time_limit if time_limit is None else time_limit
+        patience = Patience(limit, self.arena, self._process)
         try:
             self._send(packed(header, arrays), patience)
             return receive(lambda size: self._read(size, patience))
         except TimeoutError:
             self.end()
-            raise LostProcessError("hang", f"no answer within {patience.limit:g} s") from None
+            raise LostProcessError("hang", f"no answer within {limit:g} s") from None
         except (EOFError, BrokenPipeError):
             raise LostProcessError("crash", self._cause_of_death()) from None
         except BrokenFrameError:
@@ -170,26 +173,28 @@ class Isolated:
             self.end()
             raise
 
-    def _send(self, message: bytes, patience: _Patience) -> None:
+    def _send(self, message: bytes, patience: Patience) -> None:
         view = memoryview(message)
         while view:
             patience.wait(self._requests, select.POLLOUT)
             with contextlib.suppress(BlockingIOError):
                 view = view[os.write(self._requests, view) :]
 
-    def _read(self, size: int, patience: _Patience) -> bytes:
+    def _read(self, size: int, patience: Patience) -> bytes:
         while True:
             patience.wait(self._replies, select.POLLIN)
             with contextlib.suppress(BlockingIOError):
                 return os.read(self._replies, min(size, 2**20))
 
     def _cause_of_death(self) -> str:
-        try:
-            status = self._process.wait(timeout=2.0)
-        except subprocess.TimeoutExpired:
-            self.end()
-            return "its process closed the connection to the harness"
+        until = time.monotonic() + DYING
+        while not has_ended(self._process) and time.monotonic() < until:
+            time.sleep(0.001)
+        ended = has_ended(self._process)
         self.end()
+        status = self._process.returncode
+        if not ended:
+            return "its process closed the connection to the harness"
         if status >= 0:
             return f"its process ended with status {status}"
         try:
@@ -197,28 +202,3 @@ class Isolated:
         except ValueError:
             name = f"signal {-status}"
         return f"its process was killed by {name}"
-
-
-class _Patience:
-    """Waits for a descriptor as long as the routine begins a new call within the limit, over and over."""
-
-    def __init__(self, limit: float, arena: Arena | None) -> None:
-        self.limit = limit
-        self._arena = arena
-        self._begun = self._count()
-        self._since = time.monotonic()
-        self._slice = 1000.0 * min(1.0, max(0.001, limit / 8.0))  # ms
-
-    def _count(self) -> int:
-        return 0 if self._arena is None else int(self._arena.head[0])
-
-    def wait(self, descriptor: int, event: int) -> None:
-        """Return once the descriptor is ready; `TimeoutError` where patience ends."""
-        poll = select.poll()
-        poll.register(descriptor, event)
-        while not poll.poll(self._slice):
-            begun = self._count()
-            if begun != self._begun:
-                self._begun, self._since = begun, time.monotonic()
-            elif time.monotonic() - self._since > self.limit:
-                raise TimeoutError

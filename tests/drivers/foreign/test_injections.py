@@ -6,7 +6,7 @@ import pytest
 from drivers.foreign.failure import RoutineFailureError
 from tests.drivers.foreign.faults import ABORT, EXIT, KINDS, LOOP, SEGFAULT, SLEEP, block, workers
 
-INJECTIONS = int(os.environ.get("CARDPROOF_INJECTIONS", "40"))
+INJECTIONS = int(os.environ.get("CARDPROOF_INJECTIONS", "30"))
 ZERO, MEMORY = np.zeros(6), np.zeros(3)
 
 
