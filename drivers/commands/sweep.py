@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import os
+from pathlib import Path
 
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
 from drivers.report.progress import progress
 from drivers.report.sweep import sweep_data, sweep_figure, sweep_tables
+from drivers.sweep.export import csv_of, parquet_of
 from drivers.sweep.plan import plan_of
 from drivers.sweep.run import run_sweep
-from drivers.sweep.store import csv_of, parquet_of
-from drivers.sweep.sweep_file import read_sweep
+from drivers.sweep.sweep_file import SweepFile, read_sweep
 from matlib.documents import write_atomically
 from matlib.errors import ParameterError
 
@@ -38,11 +39,11 @@ def run(
         _require_parquet()
     if processes is not None and not 1 <= processes <= MOST_PROCESSES:
         raise ParameterError("--processes", f"from 1 to {MOST_PROCESSES}", processes)
-    plan = plan_of(read_sweep(file))
+    sweep = read_sweep(file)
+    _require_own(sweep, {"--json": json_file, "--csv": csv, "--parquet": parquet, "--plot": plot})
+    plan = plan_of(sweep)
     with progress(plan.sweep.name, len(plan)) as advance:
-        result = run_sweep(
-            plan, processes=processes or os.cpu_count() or 1, on=on, retry_failed=retry_failed, progress=advance
-        )
+        result = run_sweep(plan, processes=processes or _cores(), on=on, retry_failed=retry_failed, progress=advance)
     if csv is not None:
         write_atomically(csv, csv_of(result.rows))
     if parquet is not None:
@@ -50,6 +51,20 @@ def run(
     if plot is not None:
         save_figure(sweep_figure(result), plot)
     return deliver(sweep_data(result, csv, parquet), sweep_tables(result), json_file)
+
+
+def _cores() -> int:
+    """Cores that this process may use."""
+    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
+
+
+def _require_own(sweep: SweepFile, outputs: dict[str, str | None]) -> None:
+    """Refuse to write over what the sweep reads or keeps."""
+    kept = {Path(name).resolve() for name in (sweep.file, sweep.database)}
+    kept |= {(sweep.folder / name).resolve() for name in (*sweep.cards, *sweep.paths)}
+    for option, output in outputs.items():
+        if output is not None and Path(output).resolve() in kept:
+            raise ParameterError(option, "a file of its own", f"{output!r}, which belongs to the sweep")
 
 
 def _require_parquet() -> None:

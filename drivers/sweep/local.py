@@ -1,82 +1,196 @@
-"""Run cases in local processes; each commits what it finishes."""
+"""Run cases in local processes; what is lost with a process is run again in another."""
 
 from __future__ import annotations
 
 import multiprocessing
 import os
 import signal
-from collections.abc import Callable, Sequence
-from pathlib import Path
-from typing import Any
+import threading
+from collections import Counter, deque
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager, suppress
+from itertools import groupby
+from multiprocessing.connection import Connection, wait
+from multiprocessing.context import ForkProcess
 
 from drivers.sweep.plan import Case, Plan
-from drivers.sweep.run_case import Outcome, run_case
-from drivers.sweep.store import Store
+from drivers.sweep.run_case import CaseRunner, Outcome
 from matlib.errors import CardproofError
 
-__all__ = ["run_locally"]
+__all__ = ["ProcessError", "problems", "run_locally"]
+
+ATTEMPTS = 2
+"""Processes that a case may cost; then it counts as failed."""
+
+GRACE = 5.0
+"""Seconds for a process to end when it is told to."""
+
+Stretch = tuple[int, int]  # first case, and one past the last
 
 
-def run_locally(
-    plan: Plan, cases: Sequence[Case], database: Path, processes: int, progress: Callable[[int], None] | None
-) -> None:
-    """Run cases in `processes` processes.
+class ProcessError(CardproofError, RuntimeError):
+    """The system gives no process to run cases in."""
+
+    def __init__(self, reason: str) -> None:
+        super().__init__(reason)
+        self.reason = reason
+
+    def __str__(self) -> str:
+        return f"no process to run cases in: {self.reason}; name fewer with --processes"
+
+
+def problems(cases: Sequence[Case]) -> Iterator[Stretch]:
+    """Stretches of cases that share material and path, and so their reference solution."""
+    start = 0
+    for _, group in groupby(cases, key=lambda case: case.problem):
+        end = start + sum(1 for _ in group)
+        yield start, end
+        start = end
+
+
+def run_locally(plan: Plan, cases: Sequence[Case], processes: int) -> Iterator[tuple[Case, Outcome]]:
+    """Outcomes of cases as they are finished in `processes` processes.
 
     Parameters
     ----------
     plan : Plan
     cases : sequence of Case
-    database : Path
-        Each process commits a case when it is finished: whatever is killed, no finished case is lost.
     processes : int
-    progress : callable or None
-        Called with the number of cases finished since the last call.
+
+    Yields
+    ------
+    case, outcome : Case, Outcome
+
+    Raises
+    ------
+    ProcessError
+        If no process can be started.
+
+    Notes
+    -----
+    Processes take no part in writing results: one that is killed at any moment takes nothing but its case with it, which is run
+    again. They end at once when this process ends, however it does.
     """
-    context = multiprocessing.get_context("fork")
-    counter = context.Value("q", 0)
-    finished = context.Value("q", 0)
-    parent = os.getpid()
-    workers = [
-        context.Process(target=_work, args=(plan, cases, database, counter, finished, parent), daemon=True)
-        for _ in range(min(processes, len(cases)))
-    ]
-    for worker in workers:
-        worker.start()
+    crew = _Crew(plan, cases)
     try:
-        told = 0
-        while any(worker.is_alive() for worker in workers):
-            for worker in workers:
-                worker.join(timeout=0.1)
-            if progress is not None and finished.value > told:
-                progress(finished.value - told)
-                told = finished.value
+        yield from crew.outcomes(processes)
     finally:
-        for worker in workers:
-            worker.terminate()
-            worker.join()
+        crew.end()
 
 
-def _work(plan: Plan, cases: Sequence[Case], database: Path, counter: Any, finished: Any, parent: int) -> None:
-    """Take the next case until there is none, or the parent is gone."""
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
-    store = Store(database)
-    while os.getppid() == parent:
-        with counter.get_lock():
-            index = counter.value
-            counter.value += 1
-        if index >= len(cases):
-            break
-        case = cases[index]
-        store.add(case, run_planned(plan, case))
-        with finished.get_lock():
-            finished.value += 1
-    store.close()
+class _Worker:
+    """A process, and the stretch of cases that it is at."""
+
+    def __init__(self, process: ForkProcess, connection: Connection) -> None:
+        self.process, self.connection = process, connection
+        self.at, self.end = 0, 0
+
+    def take(self, stretch: Stretch) -> None:
+        self.at, self.end = stretch
+        with suppress(OSError):  # it has died: its end of the connection will tell
+            self.connection.send(stretch)
 
 
-def run_planned(plan: Plan, case: Case) -> Outcome:
-    """Outcome of a case of a plan, a sample that cannot be drawn included."""
+class _Crew:
+    """The processes of a run, what is left for them, and a pipe whose end is the sign for all to end."""
+
+    def __init__(self, plan: Plan, cases: Sequence[Case]) -> None:
+        self.plan, self.cases = plan, cases
+        self.left = deque(problems(cases))
+        self.lost: Counter[int] = Counter()
+        self.workers: list[_Worker] = []
+        self.sign, self.hold = os.pipe()
+
+    def outcomes(self, processes: int) -> Iterator[tuple[Case, Outcome]]:
+        for _ in range(min(processes, len(self.left))):
+            self.start()
+        while self.workers:
+            ready = wait([worker.connection for worker in self.workers])
+            for worker in [worker for worker in self.workers if worker.connection in ready]:
+                try:
+                    outcome = worker.connection.recv()
+                except (EOFError, OSError):
+                    yield from self.replace(worker)
+                    continue
+                yield self.cases[worker.at], outcome
+                worker.at += 1
+                if worker.at == worker.end:
+                    self.occupy(worker)
+
+    def start(self) -> None:
+        """Start a process on the next stretch."""
+        context = multiprocessing.get_context("fork")
+        ours, theirs = context.Pipe()
+        process = context.Process(target=_work, args=(self.plan, self.cases, theirs, self.sign, self.hold), daemon=True)
+        try:
+            with _no_interrupt():
+                process.start()
+        except OSError as error:
+            raise ProcessError(error.strerror or str(error)) from None
+        finally:
+            theirs.close()
+        worker = _Worker(process, ours)
+        self.workers.append(worker)
+        self.occupy(worker)
+
+    def occupy(self, worker: _Worker) -> None:
+        """Give a process the next stretch, or let it go."""
+        if self.left:
+            worker.take(self.left.popleft())
+        else:
+            self.dismiss(worker)
+
+    def dismiss(self, worker: _Worker) -> None:
+        self.workers.remove(worker)
+        with suppress(OSError):
+            worker.connection.send(None)
+        worker.connection.close()
+        worker.process.join(GRACE)
+        worker.process.kill()
+        worker.process.join()
+
+    def replace(self, worker: _Worker) -> Iterator[tuple[Case, Outcome]]:
+        """Put back what a process that died was at; a case that costs too many of them has failed."""
+        self.dismiss(worker)
+        at, code = worker.at, worker.process.exitcode or 0
+        self.lost[at] += 1
+        if self.lost[at] >= ATTEMPTS:
+            how = f"killed by signal {-code}" if code < 0 else f"exit status {code}"
+            yield self.cases[at], Outcome(error=f"its process was lost {ATTEMPTS} times ({how})")
+            at += 1
+        if at < worker.end:
+            self.left.appendleft((at, worker.end))
+        if self.left:
+            self.start()
+
+    def end(self) -> None:
+        os.close(self.hold)
+        for worker in list(self.workers):
+            self.dismiss(worker)
+        os.close(self.sign)
+
+
+@contextmanager
+def _no_interrupt() -> Iterator[None]:
+    """Keep an interrupt from the keyboard for later; a process started inside never gets one."""
+    before = signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGINT})
     try:
-        material = plan.material(case)
-    except CardproofError as error:
-        return Outcome(key=case.key, error=" ".join(str(error).split()))
-    return run_case(case.key, material, plan.path(case), case.rule)
+        yield
+    finally:
+        signal.pthread_sigmask(signal.SIG_SETMASK, before)
+
+
+def _work(plan: Plan, cases: Sequence[Case], connection: Connection, sign: int, hold: int) -> None:
+    """Run the stretches that are asked for, until nobody asks."""
+    os.close(hold)
+    threading.Thread(target=_end_with, args=(sign,), daemon=True).start()
+    runner = CaseRunner(plan)
+    while (stretch := connection.recv()) is not None:
+        for index in range(*stretch):
+            connection.send(runner.run(cases[index]))
+
+
+def _end_with(sign: int) -> None:
+    """End this process when the one that started it has ended, or wants it to."""
+    os.read(sign, 1)
+    os._exit(1)

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import dataclasses
+import difflib
 import hashlib
 import json
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
-from pathlib import Path as FilePath
+from functools import partial
 
 import numpy as np
 
@@ -15,17 +17,21 @@ from drivers.card_constants import constants, with_constants
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.studies.trial import Rule
+from drivers.sweep.digest import digest
 from drivers.sweep.sweep_file import SweepFile
-from matlib.card import Card, read_card
+from matlib.card import Card, plain, read_card
 from matlib.documents import gather
 from matlib.errors import CardproofError, Fault, FileError
 from matlib.material import Material
 from matlib.version import __version__
 
-__all__ = ["Case", "Plan", "plan_of"]
+__all__ = ["MOST_CASES", "CardPaths", "Case", "Plan", "plan_of"]
 
 REDRAWS = 50
 """Draws of a sample at most until its constants are a material."""
+
+MOST_CASES = 5_000_000
+"""More are refused: keys and rows are held in memory, about a kilobyte each."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -37,7 +43,7 @@ class Case:
     key : str
         Digest of everything that goes into the case.
     card, path : str
-        Names of the files, or of the path of the battery.
+        Files as seen from the folder of the sweep file, or the name of a path of the battery.
     rule : Rule
     sample : int
         0 is the card itself.
@@ -49,12 +55,19 @@ class Case:
     rule: Rule
     sample: int
 
+    @property
+    def problem(self) -> tuple[str, int, str]:
+        """What the case shares its reference solution by: material and path."""
+        return (self.card, self.sample, self.path)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _CardPaths:
+class CardPaths:
+    """A card, its digest, and the paths that it is run along, by name."""
+
     card: Card
     digest: str
-    paths: tuple[tuple[str, str, Path], ...]  # name, digest, path
+    paths: dict[str, Path]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -64,43 +77,50 @@ class Plan:
     Parameters
     ----------
     sweep : SweepFile
-    entries : dict of str to _CardPaths
+    entries : dict of str to CardPaths
         By card file.
     """
 
     sweep: SweepFile
-    entries: dict[str, _CardPaths]
+    entries: dict[str, CardPaths]
 
     def __len__(self) -> int:
         runs = sum(len(entry.paths) for entry in self.entries.values())
         return runs * len(self.sweep.rules) * (self.sweep.samples + 1)
 
+    @property
+    def accuracy(self) -> float:
+        """Half-width aimed at in the reference solutions: a thousandth of the tolerance, 1e-6 at most, 1e-9 at least."""
+        return min(max(1e-3 * self.sweep.tolerance, 1e-9), 1e-6)
+
     def cases(self) -> Iterator[Case]:
-        """Every case, samples of one card and path together."""
+        """Every case; those of one material and path follow each other, one a rule."""
+        drawn = digest([self.sweep.seed, self.sweep.deviation])
         for file, entry in self.entries.items():
-            for name, digest, _ in entry.paths:
-                for rule in self.sweep.rules:
-                    for sample in range(self.sweep.samples + 1):
-                        yield Case(
-                            key=self._key(entry.digest, digest, rule, sample),
-                            card=file,
-                            path=name,
-                            rule=rule,
-                            sample=sample,
-                        )
+            for name, path in entry.paths.items():
+                shared = [__version__, self.accuracy, file, entry.digest, name, digest(path)]
+                start = hashlib.sha256(json.dumps(shared).encode())
+                for sample in range(self.sweep.samples + 1):
+                    for rule in self.sweep.rules:
+                        mark = start.copy()
+                        mark.update(f"{rule.shift_rule} {rule.recursion} {sample} {drawn if sample else ''}".encode())
+                        yield Case(key=mark.hexdigest(), card=file, path=name, rule=rule, sample=sample)
 
-    def _key(self, card: str, path: str, rule: Rule, sample: int) -> str:
-        drawn = {"seed": self.sweep.seed, "deviation": self.sweep.deviation, "sample": sample} if sample else {}
-        parts = [__version__, card, path, rule.shift_rule, rule.recursion, drawn]
-        return hashlib.sha256(json.dumps(parts, sort_keys=True).encode()).hexdigest()
+    def part(self, cases: Iterable[Case]) -> Plan:
+        """What of this plan some cases need, to be sent where they are run."""
+        needed: dict[str, dict[str, Path]] = {}
+        for case in cases:
+            needed.setdefault(case.card, {})[case.path] = self.path(case)
+        entries = {file: dataclasses.replace(self.entries[file], paths=paths) for file, paths in needed.items()}
+        return Plan(sweep=dataclasses.replace(self.sweep, cards=(), paths=()), entries=entries)
 
-    def material(self, case: Case) -> Material:
-        """The material of a case; a sample that is no material is drawn again."""
-        entry = self.entries[case.card]
-        if case.sample == 0:
+    def material(self, card: str, sample: int) -> Material:
+        """A card's material, or a sample of it; a sample that is no material is drawn again."""
+        entry = self.entries[card]
+        if sample == 0:
             return entry.card.material()
         known = constants(entry.card)
-        stream = int.from_bytes(hashlib.sha256(f"{entry.digest} {case.sample}".encode()).digest()[:8], "big")
+        stream = int.from_bytes(hashlib.sha256(f"{entry.digest} {sample}".encode()).digest()[:8], "big")
         rng = np.random.default_rng([self.sweep.seed, stream])
         for _ in range(REDRAWS):
             values = {
@@ -111,11 +131,11 @@ class Plan:
                 return with_constants(entry.card, values).material()
             except CardproofError:
                 continue
-        raise SampleError(case.card, case.sample)
+        raise SampleError(card, sample)
 
     def path(self, case: Case) -> Path:
         """The path of a case."""
-        return next(path for name, _, path in self.entries[case.card].paths if name == case.path)
+        return self.entries[case.card].paths[case.path]
 
 
 class SampleError(CardproofError, ValueError):
@@ -129,10 +149,6 @@ class SampleError(CardproofError, ValueError):
         return f"sample {self.sample} of {self.card}: {REDRAWS} draws were no material; the deviations are too large"
 
 
-def _digest(file: str) -> str:
-    return hashlib.sha256(FilePath(file).read_bytes()).hexdigest()
-
-
 def plan_of(sweep: SweepFile) -> Plan:
     """Read all cards and paths of a sweep.
 
@@ -140,30 +156,57 @@ def plan_of(sweep: SweepFile) -> Plan:
     ------
     FilesError
         With the faults of all files.
+    FileError
+        If there are more than `MOST_CASES` cases.
     """
-    cards = gather([lambda file=file: _read(file, sweep) for file in sweep.cards])  # type: ignore[misc]
-    given = gather([lambda file=file: (file, _digest(file), read_path(file)) for file in sweep.paths])  # type: ignore[misc]
-    entries = {}
-    for card in cards:
-        paths = tuple(given)
-        if not paths:
-            material = card.material()
-            window = card_window(card, material)
-            paths = tuple((path.name, f"battery {path.name}", path) for path in battery(material, window))
-        entries[card.file] = _CardPaths(card=card, digest=_digest(card.file), paths=paths)
-    return Plan(sweep=sweep, entries=entries)
+    cards: dict[str, Card] = {}
+    paths: dict[str, Path] = {}
+
+    def read(name: str, *, is_card: bool) -> None:
+        file = str(sweep.folder / name)
+        if is_card:
+            cards[name] = _card(file, name, sweep)
+        else:
+            paths[name] = read_path(file)
+
+    tasks = [partial(read, name, is_card=True) for name in sweep.cards]
+    gather([*tasks, *(partial(read, name, is_card=False) for name in sweep.paths)])
+    entries = {
+        name: CardPaths(card=card, digest=digest(plain(card.document)), paths=paths or _battery(card))
+        for name, card in cards.items()
+    }
+    plan = Plan(sweep=sweep, entries=entries)
+    if len(plan) > MOST_CASES:
+        raise FileError(sweep.file, [Fault(key="cases", found=str(len(plan)), expected=f"at most {MOST_CASES} cases")])
+    return plan
 
 
-def _read(file: str, sweep: SweepFile) -> Card:
+def _battery(card: Card) -> dict[str, Path]:
+    """The battery of a card by name; of two paths with one name the second is numbered, unless it is the same path."""
+    material = card.material()
+    named: dict[str, Path] = {}
+    for path in battery(material, card_window(card, material)):
+        name, number = path.name, 1
+        while name in named and digest(named[name]) != digest(path):
+            number += 1
+            name = f"{path.name} ({number})"
+        named[name] = path
+    return named
+
+
+def _card(file: str, name: str, sweep: SweepFile) -> Card:
     """A card that is a material and has every constant that is sampled."""
     card = read_card(file)
     card.material()
-    known = constants(card)
-    faults = [
-        Fault(key=f'samples.deviation."{key}"', found="no such constant", expected="a key of the card with a number")
-        for key in sweep.deviation
-        if key not in known or isinstance(known[key].value, str)
-    ]
+    known = {key: constant for key, constant in constants(card).items() if not isinstance(constant.value, str)}
+    faults = []
+    for key in sweep.deviation:
+        if key not in known:
+            close = difflib.get_close_matches(key, known, n=1)
+            expected = "a key with a number in every card"
+            hint = f"write {close[0]!r}" if close else ""
+            fault = Fault(key=f'samples.deviation."{key}"', found=f"none in {name}", expected=expected, hint=hint)
+            faults.append(fault)
     if faults:
-        raise FileError(file, faults)
+        raise FileError(sweep.file, faults)
     return card

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Generator, Sequence
+from contextlib import closing
 from dataclasses import dataclass
 from typing import Any
 
 from drivers.sweep.local import run_locally
 from drivers.sweep.plan import Case, Plan
+from drivers.sweep.run_case import Outcome
 from drivers.sweep.store import Store
 
 __all__ = ["SweepResult", "run_sweep"]
@@ -77,33 +79,40 @@ def run_sweep(
     Raises
     ------
     FileError
-        If the database is no database of a sweep.
+        If the database is no database of a sweep, or cannot be written.
     BusyError
         If another sweep is writing to it.
+    ProcessError
+        If no local process can be started.
     ClusterError
         If the scheduler cannot be used.
-    """
-    store = Store(plan.sweep.database)
-    try:
-        with store.owned():
-            cases = list(plan.cases())
-            left = _left(store, cases, retry_failed)
-            if progress is not None:
-                progress(len(cases) - len(left))
-            if left and on is not None:
-                from drivers.sweep.cluster import run_on_cluster
 
-                run_on_cluster(plan, left, store, on, progress)
-            elif left:
-                store.close()  # a connection must not be carried into other processes
-                run_locally(plan, left, plan.sweep.database, processes, progress)
-                store = Store(plan.sweep.database)
-            rows = tuple(store.rows([case.key for case in cases]))
-    finally:
-        store.close()
+    Notes
+    -----
+    Outcomes are written here alone, each committed when it arrives: whatever is killed, no finished case is lost, and a worker
+    takes nothing with it but the case that it was at.
+    """
+    with Store(plan.sweep.database) as store:
+        cases = list(plan.cases())
+        done = store.finished(failed_too=not retry_failed)
+        left = [case for case in cases if case.key not in done]
+        new = len(cases) - len(left)  # told with the first outcome: processes are started before anything is drawn
+        with closing(_outcomes(plan, left, processes, on)) as outcomes:
+            for case, outcome in outcomes:
+                store.add(case, outcome)
+                if progress is not None:
+                    progress(new + 1)
+                new = 0
+        rows = tuple(store.rows([case.key for case in cases]))
     return SweepResult(plan=plan, rows=rows, ran=len(left))
 
 
-def _left(store: Store, cases: Sequence[Case], retry_failed: bool) -> list[Case]:
-    done = store.finished(failed_too=not retry_failed)
-    return [case for case in cases if case.key not in done]
+def _outcomes(
+    plan: Plan, left: Sequence[Case], processes: int, on: str | None
+) -> Generator[tuple[Case, Outcome], None, None]:
+    if left and on is not None:
+        from drivers.sweep.cluster import run_on_cluster
+
+        yield from run_on_cluster(plan, left, on)
+    elif left:
+        yield from run_locally(plan, left, processes)

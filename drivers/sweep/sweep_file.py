@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from dataclasses import dataclass
 from pathlib import Path as FilePath
 from typing import Annotated, Literal
@@ -67,9 +68,11 @@ class SweepFile:
     Parameters
     ----------
     file : str
+    folder : FilePath
+        Of the sweep file: where everything that it names is looked for.
     name : str
     cards, paths : tuple of str
-        Files; no paths stand for the battery of each card.
+        Files as seen from `folder`; no paths stand for the battery of each card.
     rules : tuple of Rule
     tolerance : float
     samples : int
@@ -81,6 +84,7 @@ class SweepFile:
     """
 
     file: str
+    folder: FilePath
     name: str
     cards: tuple[str, ...]
     paths: tuple[str, ...]
@@ -98,7 +102,7 @@ def _found(folder: FilePath, patterns: list[str], key: str) -> tuple[tuple[str, 
     faults = []
     for k, pattern in enumerate(patterns, start=1):
         try:
-            matches = sorted(str(match) for match in folder.glob(pattern) if match.is_file())
+            matches = sorted(os.path.relpath(match, folder) for match in folder.glob(pattern) if match.is_file())
         except (ValueError, NotImplementedError, OSError) as error:
             faults.append(
                 Fault(key=f"{key}[{k}]", found=shown(pattern), expected=f"a pattern relative to the file ({error})")
@@ -108,6 +112,18 @@ def _found(folder: FilePath, patterns: list[str], key: str) -> tuple[tuple[str, 
             faults.append(Fault(key=f"{key}[{k}]", found=shown(pattern), expected="at least one file that matches"))
         files.update(dict.fromkeys(matches))
     return tuple(files), faults
+
+
+def _repeated(rules: list[RuleTable]) -> list[Fault]:
+    """A rule given twice is a fault: its cases would be one and the same."""
+    first: dict[tuple[str, str], int] = {}
+    faults = []
+    for k, rule in enumerate(rules, start=1):
+        same = first.setdefault((rule.shift_rule, rule.recursion), k)
+        if same != k:
+            found = f"{rule.shift_rule}, {rule.recursion}, as in cases.rules[{same}]"
+            faults.append(Fault(key=f"cases.rules[{k}]", found=found, expected="each rule once", hint="remove one"))
+    return faults
 
 
 def read_sweep(file: str | FilePath) -> SweepFile:
@@ -135,6 +151,7 @@ def read_sweep(file: str | FilePath) -> SweepFile:
         if document.cases.paths is not None:
             paths, more = _found(path.parent, document.cases.paths, "cases.paths")
             faults += more
+        faults += _repeated(document.cases.rules)
         database = path.parent / document.output.database
         if not database.parent.is_dir():
             faults.append(
@@ -147,6 +164,7 @@ def read_sweep(file: str | FilePath) -> SweepFile:
     samples = document.samples
     return SweepFile(
         file=str(file),
+        folder=path.parent,
         name=document.name,
         cards=cards,
         paths=paths,
