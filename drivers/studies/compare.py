@@ -31,6 +31,9 @@ ROWS = 48
 MOST_ROWS = 20_000
 """Rows of a path with many segments, but for at least 4 of each segment."""
 
+LARGEST_ROUNDING = 1e-6
+"""What rounding may do to a card that is worth the name; a pole a millikelvin away comes near."""
+
 LARGEST_RUN = 200_000
 """Rows of a path at most: a few minutes."""
 
@@ -154,7 +157,7 @@ def rounding_bound(material: Material, path: Path, history: History) -> float:
     Returns
     -------
     bound : float
-        Relative to the peak stress.
+        Relative to the peak stress; 0 for a law so steep that rounding would excuse anything.
 
     Notes
     -----
@@ -167,7 +170,8 @@ def rounding_bound(material: Material, path: Path, history: History) -> float:
     strain = float(np.abs(history.strain).max()) + 3.0 * abs(material.expansion) * (T_high - T_low)
     peak = history.peak_stress
     magnified = max(1.0, stiffness * strain / peak) if peak > 0.0 else 1.0
-    return 4.0 * EPS * (path.increment_count + 8.0 * cond) * magnified
+    share = 4.0 * EPS * (path.increment_count + 8.0 * cond)
+    return share * magnified if share < LARGEST_ROUNDING else 0.0
 
 
 def _common(path: Path) -> Path:

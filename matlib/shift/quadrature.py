@@ -17,6 +17,7 @@ _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(15)
 _NODES, _WEIGHTS = 0.5 * (1.0 + _NODES), 0.5 * _WEIGHTS  # on [0, 1]
 _TOLERANCE = 1e-14  # of the ramp's total; the sum of halves is far better than its difference from the whole
 _NOISE = 8.0 * np.finfo(np.float64).eps  # rounding of ln a_T, which a relative rate inherits
+_T_NOISE = np.finfo(np.float64).eps  # rounding of T, which moves ln a_T by the slope of the law
 _STEEP = 40.0  # an interval over which the rate changes more than exp(40)-fold may hide a peak between its nodes
 _DEPTH = 60
 
@@ -116,7 +117,8 @@ def _adapt(
             halves = lower + upper
             total = closed + np.bincount(owner, halves, minlength=low.size)
             largest = np.exp(ln_fastest[owner] - np.minimum(ln_left, ln_right)) * (right - left) / (high - low)[owner]
-            noise = _NOISE * (1.0 + np.maximum(np.abs(ln_left), np.abs(ln_right))) * halves
+            moved = np.abs(ln_left - ln_right) * (right / np.maximum(right - left, np.spacing(right))) * _T_NOISE
+            noise = (_NOISE * (1.0 + np.maximum(np.abs(ln_left), np.abs(ln_right))) + moved) * halves
             agree = np.abs(whole - halves) <= _TOLERANCE * total[owner] + noise
             gentle = (np.abs(ln_left - ln_right) <= _STEEP) | (largest <= 0.01 * _TOLERANCE * total[owner])
             done = (agree & gentle) | (depth == _DEPTH - 1)

@@ -14,7 +14,7 @@ from drivers.studies.compare import LARGEST_RUN, Comparison, compare
 from matlib.errors import ParameterError
 from matlib.material import Material
 from matlib.prony import PronySeries
-from matlib.shift import VFT, WLF, MeasuredRange, NoShift
+from matlib.shift import VFT, WLF, MeasuredRange, NoShift, Table
 from matlib.shift.conversion import convert_law
 from tests.strategies import COLD, HOT, materials, paths
 
@@ -172,6 +172,24 @@ def test_a_range_of_temperature_as_small_as_a_rounding_is_no_crash(resin):
     result = compared(resin, scaled(resin, 1.1), almost, T=almost.temperature_range)
     assert result.paths[0].relative == pytest.approx(0.1, rel=1e-6)
     assert compared(resin, resin, almost, T=almost.temperature_range).same == "identical"
+
+
+def test_a_law_too_steep_for_doubles_is_not_excused_by_rounding(resin):
+    steep = [
+        dataclasses.replace(resin, shift=Table(T=[333.15, 353.15, 403.15], log10_a=[2.0, 0.0, top], T_ref=353.15))
+        for top in (1e18, -4.0)
+    ]
+    heated = path_of(segment("uniaxial strain", T=373.15), segment("uniaxial strain", value=0.0))
+    assert compared(steep[1], steep[0], heated).same == "different"
+    assert compared(steep[0], steep[0], heated).same == "identical"
+
+
+def test_free_expansion_bears_nothing_but_rounding_and_is_identical_in_another_form(resin):
+    law = resin.shift
+    assert isinstance(law, WLF)
+    offset = dataclasses.replace(resin, shift=VFT(B=LN10 * law.C1 * law.C2, T_inf=law.T_ref - law.C2, T_ref=law.T_ref))
+    free = path_of(segment("hydrostatic", by="stress", value=0.0, T=390.0), mode="hydrostatic")
+    assert compared(resin, offset, free).same == "identical"
 
 
 def test_the_increments_of_the_path_have_no_say(resin):

@@ -26,6 +26,20 @@ def test_a_peak_at_a_knot_is_not_missed():
     np.testing.assert_allclose(mean, 2e-6, rtol=1e-9)
 
 
+def test_a_peak_as_narrow_as_the_rounding_of_temperatures_allows_ends_soon():
+    asked = 0
+
+    def ln_shift(T):
+        nonlocal asked
+        asked += T.size
+        return 7e18 * ((T - 350.0) / 50.0) ** 2  # ln a_T jumps by 1e-5 from one double to the next at the peak
+
+    mean = mean_rate_by_quadrature(ln_shift, (350.0,), 350.0, 351.0)
+    # mean of exp(-(x/w)^2) over 1 K, w = 50/sqrt(7e18) K; T is rounded to 3e-14 K, a millionth of w
+    np.testing.assert_allclose(mean, 0.5 * math.sqrt(math.pi) * 50.0 / math.sqrt(7e18), rtol=1e-5)
+    assert asked < 10_000
+
+
 def test_ramps_are_split_at_the_knots_inside_them_only():
     knots = (310.0, 320.0, 330.0)
     starts = np.array([300.0, 310.0, 312.0, 325.0, 340.0, 330.0, 320.0])
