@@ -12,7 +12,7 @@ from drivers.path import Path, Segment
 from matlib.arrays import FloatArray
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
 
-__all__ = ["Difference", "Where", "largest_difference", "shared_rows"]
+__all__ = ["Difference", "Where", "largest_difference", "relative_gaps", "shared_rows"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,6 +84,25 @@ def largest_difference(first: History, second: History) -> Difference:
                 ),
             )
     return best
+
+
+def relative_gaps(first: History, second: History, quantity: str) -> FloatArray:
+    """Largest difference over the components, row by row.
+
+    Parameters
+    ----------
+    first, second : History
+        With the same rows.
+    quantity : {"stress", "strain"}
+
+    Returns
+    -------
+    gaps : ndarray, shape (n,)
+        As a fraction of the peak of the first (of the second, where the first stays zero).
+    """
+    a, b = (h.stress_components if quantity == "stress" else h.strain_components for h in (first, second))
+    peak = float(np.abs(a).max()) or float(np.abs(b).max()) or 1.0
+    return np.asarray(np.abs(a - b).max(axis=1) / peak)
 
 
 def shared_rows(path: Path, counts_a: tuple[int, ...], counts_b: tuple[int, ...]) -> tuple[np.ndarray, np.ndarray]:

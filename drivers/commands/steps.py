@@ -10,7 +10,7 @@ from drivers.foreign.routine_file import RoutineFile
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.progress import progress
-from drivers.report.steps import steps_data, steps_figure, steps_tables
+from drivers.report.steps import steps_data, steps_tables
 from drivers.studies.routine_runner import RoutineRunner
 from drivers.studies.steps import Rule, StepsResult, steps
 from drivers.studies.trial import OWN
@@ -78,5 +78,7 @@ def _of_routine(described: RoutineFile, path: Path, tolerance: float, plot: str 
 
 def _hand_over(result: StepsResult, subject: Subject, plot: str | None, json_file: str | None) -> int:
     if plot is not None:
+        from drivers.report.steps_plot import steps_figure
+
         save_figure(steps_figure(result), plot)
     return deliver(steps_data(result, subject), steps_tables(result, subject), json_file)

@@ -14,9 +14,13 @@ from drivers.studies.audit import AuditResult, CheckResult
 from matlib.tensors import stress_from_mandel
 
 if TYPE_CHECKING:
+    from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-__all__ = ["audit_data", "audit_figure", "audit_tables", "replay_data", "replay_tables"]
+__all__ = ["audit_data", "audit_figure", "audit_tables", "draw_checks", "replay_data", "replay_tables"]
+
+LEAST = 1e-17
+"""Smaller numbers are drawn as this."""
 
 
 def audit_data(result: AuditResult, routine: str, card: str | None) -> dict[str, Any]:
@@ -68,34 +72,34 @@ def _mark(check: CheckResult) -> Text:
 
 
 def audit_figure(result: AuditResult) -> Figure:
-    """Measured against limit of every check, on one logarithmic axis."""
+    """Measured against limit of every check."""
     from matplotlib.figure import Figure
 
     figure = Figure(figsize=(7.0, 4.6), layout="constrained")
-    axes = figure.add_subplot()
-    checks = [check for check in result.checks if check.measured is not None and check.limit is not None]
-    for row, check in enumerate(reversed(checks)):
-        assert check.measured is not None
-        assert check.limit is not None
-        colour = "#1b3a5c" if check.holds else "#b45309"
-        axes.plot(
-            max(check.measured, 1e-17),
-            row,
-            marker="o" if check.holds else "X",
-            color=colour,
-            markersize=8,
-            linestyle="none",
-        )
-        axes.plot(
-            max(check.limit, 1e-17), row, marker="|", color="black", markersize=16, markeredgewidth=2, linestyle="none"
-        )
-    axes.set_xscale("log")
-    axes.set_yticks(range(len(checks)), [check.id for check in reversed(checks)])
-    axes.set_xlabel("measured (disc: holds, cross: wrong) and limit (bar), relative; order: as observed [-]")
-    axes.set_title("measured against limit", loc="left", fontsize=10, fontweight="bold")
-    axes.grid(True, axis="x", color="#d1d5db", linewidth=0.5)
-    axes.spines[["top", "right"]].set_visible(False)
+    draw_checks(figure.add_subplot(), result)
+    figure.legend(loc="outside upper left", ncols=3, frameon=False)
     return figure
+
+
+def draw_checks(axes: Axes, result: AuditResult) -> None:
+    """Measured against limit of every check that measures something, on one logarithmic axis."""
+    from matplotlib.ticker import LogLocator
+
+    from drivers.report.axes import INK, SECOND, finish
+
+    checks = [check for check in reversed(result.checks) if check.measured is not None and check.limit is not None]
+    limits = [max(check.limit or 0.0, LEAST) for check in checks]
+    rows = range(len(checks))
+    axes.plot(limits, rows, marker="|", color="black", markersize=14, markeredgewidth=2, linestyle="", label="limit")
+    for holds, marker, colour, label in ((True, "o", INK, "holds"), (False, "X", SECOND["color"], "falls short")):
+        chosen = [(max(c.measured or 0.0, LEAST), row) for row, c in enumerate(checks) if c.holds is holds]
+        if chosen:
+            x, y = zip(*chosen, strict=True)
+            axes.plot(x, y, marker=marker, color=colour, markersize=8, linestyle="", label=label)
+    axes.set_xscale("log")
+    axes.xaxis.set_major_locator(LogLocator(numticks=6))
+    axes.set_yticks(rows, [check.id for check in checks])
+    finish(axes, "measured, and its limit [-]", "")
 
 
 def replay_data(result: ReplayResult) -> dict[str, Any]:

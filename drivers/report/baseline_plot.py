@@ -2,29 +2,25 @@
 
 from __future__ import annotations
 
-import math
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from matplotlib.figure import Figure
 
-from drivers.history import History
+from drivers.report.axes import BAND, FIRST, INK, SECOND, THIRD, finish, time_unit
 from drivers.report.baseline import Verified
-from drivers.report.plots import FIRST, SECOND, THIRD
+from drivers.report.response_plot import Shown, main_component, scale_time
 from drivers.studies.baseline import PathVerdict
 from drivers.studies.spread import LEVEL, PathScatter
-from matlib.arrays import FloatArray
-from matlib.card import Card
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
-from matlib.units import TIME, Unit
+from matlib.units import Unit
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
-__all__ = ["verified_figure"]
+__all__ = ["draw_before_after", "draw_change", "draw_ratios", "verified_figure"]
 
-BAND: dict[str, Any] = {"color": "#9ca3af", "alpha": 0.35, "linewidth": 0.0}
-SCATTER: dict[str, Any] = {"color": "#7c3aed", "alpha": 0.18, "linewidth": 0.0}
+SCATTER: dict[str, Any] = {"facecolor": "none", "edgecolor": "#6b7280", "hatch": "....", "linewidth": 0.4}
 LEAST_RATIO = 1e-6
 """Changes below this part of a tolerance are drawn as this."""
 
@@ -49,83 +45,75 @@ def verified_figure(verified: Verified) -> Figure:
     scatter = None
     if verified.scatter is not None:
         scatter = next(path for path in verified.scatter.paths if path.verdict is worst)
-    _draw_path(upper, lower, worst, verified.card, scatter)
-    _draw_ratios(right, verified.verification.paths)
+    stress = verified.card.stress_unit
+    draw_before_after(upper, worst, stress, scatter, f"path that moved most: {worst.name}")
+    upper.legend(frameon=False)
+    upper.set_xlabel("")
+    draw_change(lower, worst, stress, "change, now - recorded")
+    draw_ratios(right, verified.verification.paths, "all paths")
     verdict = "behaves as accepted" if verified.holds else "does not behave as accepted"
     names = f"recorded (solid): {verified.baseline.card_name}\nnow (dashed): {verified.card.name}"
     figure.suptitle(f"{verdict}\n{names}", fontsize=10, x=0.01, ha="left", parse_math=False)
     return figure
 
 
-def _finish(axes: Axes, x: str, y: str, title: str) -> None:
-    axes.set_xlabel(x)
-    axes.set_ylabel(y)
-    axes.set_title(title, loc="left", fontsize=10, fontweight="bold", parse_math=False)
-    axes.grid(True, color="#d1d5db", linewidth=0.5)
-    axes.spines[["top", "right"]].set_visible(False)
+def shown_of_verdict(path: PathVerdict, stress_unit: Unit) -> Shown:
+    """The component of the largest change; where nothing has changed, that of the largest stress."""
+    then, difference = path.recorded.response, path.difference
+    clock = time_unit(float(then.time[-1]))
+    if difference is None or difference.value == 0.0:
+        return Shown(is_stress=True, component=main_component(then), stress_unit=stress_unit, clock=clock)
+    names = STRESS_COMPONENTS if difference.quantity == "stress" else STRAIN_COMPONENTS
+    component = names.index(difference.component)
+    return Shown(is_stress=names is STRESS_COMPONENTS, component=component, stress_unit=stress_unit, clock=clock)
 
 
-def _shown(path: PathVerdict) -> tuple[bool, int]:
-    """Whether stress is shown rather than strain, and which component: that of the largest change, or of the largest stress."""
-    if path.difference is None or path.difference.value == 0.0:
-        return True, int(np.abs(path.recorded.response.stress_components).max(axis=0).argmax())
-    if path.difference.quantity == "stress":
-        return True, STRESS_COMPONENTS.index(path.difference.component)
-    return False, STRAIN_COMPONENTS.index(path.difference.component)
-
-
-def _draw_path(upper: Axes, lower: Axes, path: PathVerdict, card: Card, scatter: PathScatter | None) -> None:
-    stress, component = _shown(path)
+def _width(path: PathVerdict, shown: Shown) -> float:
+    """Half-width of what is accepted, in the unit of what is shown."""
     then = path.recorded.response
-    clock = _time_unit(float(then.time[-1]))
-    name = STRESS_COMPONENTS[component] if stress else STRAIN_COMPONENTS[component]
-    unit = card.stress_unit.name if stress else "-"
+    peak = float(np.abs(then.stress_components if shown.is_stress else then.strain_components).max())
+    return path.tolerance * (float(shown.stress_unit.from_si(peak)) if shown.is_stress else peak)
 
-    def values(history: History) -> FloatArray:
-        if stress:
-            return card.stress_unit.from_si(history.stress_components[:, component])
-        return history.strain_components[:, component]
 
-    time, before = clock.from_si(then.time), values(then)
-    every = then.stress_components if stress else then.strain_components
-    peak = float(np.abs(every).max())
-    width = path.tolerance * (card.stress_unit.from_si(peak) if stress else peak)
-    upper.fill_between(time, before - width, before + width, label="accepted", **BAND)
-    if scatter is not None and stress:
-        low, high = (card.stress_unit.from_si(edge[:, component]) for edge in (scatter.low, scatter.high))
+def draw_before_after(
+    axes: Axes, path: PathVerdict, stress_unit: Unit, scatter: PathScatter | None = None, title: str = ""
+) -> None:
+    """Recorded and present response to a path, with the tolerance band and the scatter of the calibration."""
+    shown, then = shown_of_verdict(path, stress_unit), path.recorded.response
+    before, width = shown.values(then), _width(path, shown)
+    axes.fill_between(shown.time(then), before - width, before + width, label="accepted", **BAND)
+    if scatter is not None and shown.is_stress:
+        low, high = (stress_unit.from_si(edge[:, shown.component]) for edge in (scatter.low, scatter.high))
         label = f"scatter, {100.0 * LEVEL:g} %"
-        upper.fill_between(clock.from_si(scatter.centre.time), low, high, label=label, **SCATTER)
-    upper.plot(time, before, label="recorded", **FIRST)
-    lower.axhspan(-width, width, **BAND)
+        axes.fill_between(shown.time(scatter.centre), np.asarray(low), np.asarray(high), label=label, **SCATTER)
+    axes.plot(shown.time(then), before, label="recorded", **FIRST)
     if path.now is not None:
-        after = values(path.now)
-        upper.plot(time, after, label="now", **SECOND)
-        lower.plot(time, after - before, **THIRD)
-    upper.legend(frameon=False)
-    _finish(upper, "", f"{name} [{unit}]", f"path that moved most: {path.name}")
-    _finish(lower, f"time [{clock.name}]", f"{name} [{unit}]", "change, now - recorded")
-    positive = then.time[then.time > 0.0]
-    if positive.size > 1 and math.log10(float(positive[-1] / positive[0])) > 5.0 and np.ptp(then.temperature) == 0.0:
-        upper.set_xscale("log")
+        axes.plot(shown.time(path.now), shown.values(path.now), label="now", **SECOND)
+    scale_time(axes, then)
+    finish(axes, f"time [{shown.clock.name}]", shown.label, title)
 
 
-def _time_unit(duration: float) -> Unit:
-    for name in ("d", "h", "min"):
-        if duration >= 2.0 * TIME[name].scale:
-            return TIME[name]
-    return TIME["s"]
+def draw_change(axes: Axes, path: PathVerdict, stress_unit: Unit, title: str = "") -> None:
+    """Present response minus the recorded one, with the tolerance band."""
+    shown, then = shown_of_verdict(path, stress_unit), path.recorded.response
+    width = _width(path, shown)
+    axes.axhspan(-width, width, label="accepted", **BAND)
+    if path.now is not None:
+        axes.plot(shown.time(then), shown.values(path.now) - shown.values(then), label="now - recorded", **THIRD)
+    scale_time(axes, then)
+    finish(axes, f"time [{shown.clock.name}]", f"change, {shown.label}", title)
 
 
-def _draw_ratios(axes: Axes, paths: tuple[PathVerdict, ...]) -> None:
+def draw_ratios(axes: Axes, paths: tuple[PathVerdict, ...], title: str = "") -> None:
     """Change of every path in units of its tolerance; without an answer, a cross."""
     ordered = sorted(paths, key=lambda path: path.ratio)
     for k, path in enumerate(ordered):
-        color = FIRST["color"] if path.holds else SECOND["color"]
+        color = INK if path.holds else SECOND["color"]
         if path.difference is None:
             axes.plot([1.0], [k], marker="x", color=color)
         else:
             axes.plot([max(path.ratio, LEAST_RATIO)], [k], marker="o" if path.holds else "s", color=color, linestyle="")
     axes.axvline(1.0, color="black", linewidth=0.8)
     axes.set_xscale("log")
-    axes.set_yticks(range(len(ordered)), [path.name for path in ordered], fontsize=7, parse_math=False)
-    _finish(axes, "change in units of the tolerance [-]", "", "all paths")
+    axes.set_yticks(range(len(ordered)), [path.name for path in ordered], parse_math=False)
+    finish(axes, "change in units of the tolerance [-]", "", title)

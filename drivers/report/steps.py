@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from rich.console import RenderableType
 from rich.table import Table
@@ -15,10 +15,7 @@ from drivers.studies.ladder import RuleResult
 from drivers.studies.steps import StepsResult
 from drivers.subject import Subject
 
-if TYPE_CHECKING:
-    from matplotlib.figure import Figure
-
-__all__ = ["steps_data", "steps_figure", "steps_tables"]
+__all__ = ["steps_data", "steps_tables"]
 
 
 def steps_data(result: StepsResult, card: Subject) -> dict[str, Any]:
@@ -134,8 +131,8 @@ def _rules_table(result: StepsResult) -> Table:
         ("recursion", "left"),
         ("needed", "right"),
         ("order", "right"),
-        ("error at", "right"),
-        ("", "right"),
+        ("most run", "right"),
+        ("error then", "right"),
     ]
     table = plain_table(title, columns)
     for rule in sorted(result.rules, key=lambda r: r.increments_needed or math.inf):
@@ -149,56 +146,3 @@ def _rules_table(result: StepsResult) -> Table:
             percent(last.relative_error),
         )
     return table
-
-
-MARKS = ("o", "s", "^", "D", "v", "P")
-COLOURS = {"exponential": "#1b3a5c", "midpoint": "#d97706", "trapezoidal": "#0f766e", "backward-euler": "#6b7280"}
-DASHES = {"exponential": "-", "midpoint": "--", "trapezoidal": "-.", "backward-euler": ":"}
-
-
-def steps_figure(result: StepsResult) -> Figure:
-    """Error against increments, one line a rule, slopes to read, the tolerance as a line."""
-    from matplotlib.figure import Figure
-
-    figure = Figure(figsize=(9.0, 6.0), layout="constrained")
-    axes = figure.add_subplot()
-    shift_rules = list(dict.fromkeys(r.rule.shift_rule for r in result.rules))
-    for rule in result.rules:
-        order = "" if rule.order is None else f"  {rule.order:.1f}"
-        axes.loglog(
-            [rung.increments for rung in rule.errors],
-            [max(rung.relative_error, 1e-16) for rung in rule.errors],
-            color=COLOURS.get(rule.rule.recursion, "#1b3a5c"),
-            linestyle=DASHES.get(rule.rule.recursion, "-"),
-            marker=MARKS[shift_rules.index(rule.rule.shift_rule) % len(MARKS)],
-            markersize=4,
-            linewidth=1.2,
-            label=f"{rule.rule}{order}",
-        )
-    axes.axhline(result.tolerance, color="#b91c1c", linewidth=1.4)
-    axes.text(0.01, result.tolerance, " tolerance", color="#b91c1c", va="bottom", transform=axes.get_yaxis_transform())
-    axes.plot(
-        result.path.increment_count, max(result.own.relative, 1e-16), marker="*", markersize=13, color="#b91c1c", linestyle="none",
-        label="the path's own",
-    )  # fmt: skip
-    _draw_slopes(axes, result)
-    axes.set_xlabel("increments of the whole path [-]")
-    axes.set_ylabel("largest error, as a fraction of the peak [-]")
-    axes.set_title(f"{result.path.name}: error against increments", loc="left", fontsize=11, fontweight="bold")
-    axes.grid(True, which="major", color="#d1d5db", linewidth=0.5)
-    axes.spines[["top", "right"]].set_visible(False)
-    figure.legend(loc="outside right upper", fontsize=7, frameon=False, title="rule, observed order", title_fontsize=8)
-    return figure
-
-
-def _draw_slopes(axes: Any, result: StepsResult) -> None:
-    """Slopes 1 and 2 to read the lines by, from a corner that the lines leave free."""
-    counts = [rung.increments for rule in result.rules for rung in rule.errors] or [10]
-    errors = [rung.relative_error for rule in result.rules for rung in rule.errors if rung.relative_error > 0.0] or [
-        1e-2
-    ]
-    left, right = min(counts), min(counts) * 8
-    for slope in (1, 2):
-        top = min(errors) * 8.0**slope
-        axes.plot([left, right], [top, top / 8.0**slope], color="black", linewidth=0.8)
-        axes.annotate(f"order {slope}", (left, top), fontsize=8, textcoords="offset points", xytext=(2, 4))

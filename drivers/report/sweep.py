@@ -13,11 +13,14 @@ from drivers.report.tables import percent, plain_table, verdict_line
 from drivers.sweep.run import SweepResult
 
 if TYPE_CHECKING:
+    from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-__all__ = ["sweep_data", "sweep_figure", "sweep_tables"]
+__all__ = ["draw_distribution", "draw_worst", "sweep_data", "sweep_figure", "sweep_tables", "worst_cases"]
 
 WORST_SHOWN = 10
+LEAST = 1e-12
+"""Errors below this are drawn as this."""
 
 
 def sweep_data(result: SweepResult, csv: str | None, parquet: str | None) -> dict[str, Any]:
@@ -35,7 +38,7 @@ def sweep_data(result: SweepResult, csv: str | None, parquet: str | None) -> dic
         database=str(sweep.database),
         csv=csv,
         parquet=parquet,
-        worst=[_case(row) for row in _worst(result)],
+        worst=[_case(row) for row in worst_cases(result)],
         failures=[_case(row) for row in result.failed[:WORST_SHOWN]],
     )
 
@@ -55,7 +58,8 @@ def _case(row: dict[str, Any]) -> dict[str, Any]:
     return {name: row[name] for name in names}
 
 
-def _worst(result: SweepResult) -> list[dict[str, Any]]:
+def worst_cases(result: SweepResult) -> list[dict[str, Any]]:
+    """The cases with the largest errors."""
     finished = [row for row in result.rows if row["error"] is None]
     return sorted(finished, key=lambda row: -row["relative_error"])[:WORST_SHOWN]
 
@@ -79,7 +83,7 @@ def sweep_tables(result: SweepResult) -> list[RenderableType]:
 def _worst_table(result: SweepResult) -> Table:
     columns = [("error", "right"), ("card", "left"), ("path", "left"), ("rule", "left"), ("sample", "right")]
     table = plain_table("Largest errors of the path's own increments", columns)
-    for row in _worst(result):
+    for row in worst_cases(result):
         rule = f"{row['shift_rule']}, {row['recursion']}"
         table.add_row(percent(row["relative_error"]), row["card"], row["path"], rule, str(row["sample"] or ""))
     return table
@@ -87,21 +91,46 @@ def _worst_table(result: SweepResult) -> Table:
 
 def sweep_figure(result: SweepResult) -> Figure:
     """Distribution of the errors of all cases, the tolerance as a line."""
-    import numpy as np
     from matplotlib.figure import Figure
 
     figure = Figure(figsize=(7.0, 4.2), layout="constrained")
     axes = figure.add_subplot()
-    errors = np.array([max(row["relative_error"], 1e-12) for row in result.rows if row["error"] is None] or [1e-12])
-    low, high = np.floor(np.log10(errors.min())), np.ceil(np.log10(errors.max()) + 1e-9)
-    axes.hist(errors, bins=np.logspace(low, max(high, low + 1.0), 41).tolist(), color="#1b3a5c")
-    axes.axvline(result.plan.sweep.tolerance, color="#b45309", linestyle="--", label="tolerance")
-    axes.set_xscale("log")
-    axes.set_xlabel("largest error of a case, as a fraction of the peak [-]")
-    axes.set_ylabel("cases [-]")
-    axes.set_title(
-        f"{result.plan.sweep.name}: errors of {errors.size} cases", loc="left", fontsize=10, fontweight="bold"
-    )
-    axes.spines[["top", "right"]].set_visible(False)
+    draw_distribution(axes, result)
+    axes.set_title(f"{result.plan.sweep.name}: errors", loc="left", fontsize=10, fontweight="bold", parse_math=False)
     axes.legend(frameon=False)
     return figure
+
+
+def draw_distribution(axes: Axes, result: SweepResult) -> None:
+    """How many cases have which error."""
+    import numpy as np
+
+    from drivers.report.axes import INK, LIMIT, finish
+
+    errors = np.array([max(row["relative_error"], LEAST) for row in result.rows if row["error"] is None] or [LEAST])
+    low, high = np.floor(np.log10(errors.min())), np.ceil(np.log10(errors.max()) + 1e-9)
+    axes.hist(errors, bins=np.logspace(low, max(high, low + 1.0), 41).tolist(), color=INK, label="cases")
+    axes.axvline(result.plan.sweep.tolerance, label="tolerance", **LIMIT)
+    axes.set_xscale("log")
+    finish(axes, "largest error of a case / peak [-]", "cases [-]")
+
+
+def draw_worst(axes: Axes, result: SweepResult) -> None:
+    """The largest errors, one a row."""
+    from pathlib import Path
+
+    from drivers.report.axes import INK, LIMIT, SECOND, finish
+
+    rows = list(reversed(worst_cases(result)))
+    over = {id(row) for row in result.beyond}
+    for k, row in enumerate(rows):
+        beyond = id(row) in over
+        axes.plot(
+            [max(row["relative_error"], LEAST)], [k], marker="s" if beyond else "o", linestyle="",
+            color=SECOND["color"] if beyond else INK,
+        )  # fmt: skip
+    axes.axvline(result.plan.sweep.tolerance, label="tolerance", **LIMIT)
+    axes.set_xscale("log")
+    names = [f"{Path(row['card']).name.partition('.')[0]} {row['sample'] or ''}".strip() for row in rows]
+    axes.set_yticks(range(len(rows)), names, parse_math=False)
+    finish(axes, "largest error of a case / peak [-]", "card, sample")

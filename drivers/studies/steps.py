@@ -6,19 +6,39 @@ import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from drivers.difference import Difference
+from drivers.difference import Difference, largest_difference, relative_gaps
 from drivers.path import Path
 from drivers.studies.blame import Blame, find_blame
 from drivers.studies.ladder import RuleResult, climb
 from drivers.studies.recommend import Recommendation, recommend
 from drivers.studies.trial import CardRunner, Rule, Runner, Trials
+from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
 
-__all__ = ["Rule", "StepsResult", "steps"]
+__all__ = ["Course", "Rule", "StepsResult", "steps"]
 
 TIGHTEST = 1e-9
 """Smallest tolerance: below it the reference solution itself would have to be bounded more tightly than rounding allows."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Course:
+    """The error of a run over its time.
+
+    Parameters
+    ----------
+    time : ndarray, shape (n,)
+        Increment ends [s].
+    error : ndarray, shape (n,)
+        Largest over the components, as a fraction of the peak.
+    segment : tuple of str, length n
+        Label of the segment that each row ends an increment of.
+    """
+
+    time: FloatArray
+    error: FloatArray
+    segment: tuple[str, ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -34,6 +54,8 @@ class StepsResult:
         The rule that `own` and `recommended` are for.
     own : Difference
         Error of the path's own increments.
+    course : Course
+        The same over the time of the path.
     reference_bound : float
         Largest relative half-width of the reference solutions that were used.
     estimated : bool
@@ -51,6 +73,7 @@ class StepsResult:
     tolerance: float
     rule: Rule
     own: Difference
+    course: Course
     reference_bound: float
     estimated: bool
     rules: tuple[RuleResult, ...]
@@ -106,7 +129,9 @@ def steps(
     runner = subject if isinstance(subject, Runner) else CardRunner(material=subject)
     trials = Trials(runner=runner, path=path, accuracy=accuracy, done=progress)
     counts = tuple(segment.increments for segment in path.segments)
-    own = trials.difference(rule, counts)
+    truth, response = trials.reference(counts).history, trials.run(rule, counts)
+    own = largest_difference(truth, response)
+    course = Course(time=truth.time, error=relative_gaps(truth, response, own.quantity), segment=truth.segment)
     recommended = recommend(trials, rule, tolerance)
     blame = find_blame(trials, rule, counts, own)
     climbed = tuple(climb(trials, one, tolerance) for one in rules)
@@ -116,6 +141,7 @@ def steps(
         tolerance=tolerance,
         rule=rule,
         own=own,
+        course=course,
         reference_bound=max(reference.relative_bound for reference in references),
         estimated=any(reference.estimated for reference in references),
         rules=climbed,
