@@ -30,8 +30,8 @@ __all__ = ["MOST_CASES", "CardPaths", "Case", "Plan", "plan_of"]
 REDRAWS = 50
 """Draws of a sample at most until its constants are a material."""
 
-MOST_CASES = 5_000_000
-"""More are refused: keys and rows are held in memory, about a kilobyte each."""
+MOST_CASES = 2_000_000
+"""More are refused: keys and rows are held in memory, about two kilobytes a case."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

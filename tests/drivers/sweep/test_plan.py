@@ -4,6 +4,7 @@ import dataclasses
 import os
 import pickle
 import time
+from pathlib import Path
 
 import pytest
 
@@ -189,3 +190,16 @@ def test_a_bad_value_is_refused_with_its_key(folder, sweep, old, new, key):
     assert (status, out) == (2, "")
     assert any(line.startswith(f"{place.file}: {key}") for line in err.splitlines()), err
     assert not place.database.exists()
+
+
+def test_the_sweep_file_of_the_readme_is_complete(folder):
+    text = (Path(__file__).parents[3] / "README.md").read_text(encoding="utf-8")
+    (block,) = (block for block in text.split("```toml\n")[1:] if "[samples.deviation]" in block)
+    place = folder()
+    (place.place / "paths").mkdir()
+    (place.place / "p.path.toml").rename(place.place / "paths" / "p.path.toml")
+    place.file.write_text(block.partition("```")[0])
+    plan = plan_of(read_sweep(place.file))
+    assert len(plan) == 2 * 1 * 2 * 201
+    last = list(plan.cases())[-1]
+    assert CaseRunner(plan).run(last).error is None
