@@ -5,13 +5,15 @@ from __future__ import annotations
 import contextlib
 import io
 import os
+import shlex
 import sys
 from pathlib import Path
-from typing import Annotated
+from typing import Annotated, Any
 
 import typer
 from typer.exceptions import TyperException
 
+from drivers.commands.reporting import Report, require_report
 from matlib.errors import CardproofError
 from matlib.version import __version__
 
@@ -30,6 +32,26 @@ CardFiles = Annotated[list[str], typer.Argument(metavar="CARD...", help="Card fi
 PathFile = Annotated[str, typer.Argument(metavar="PATH", help="A path file, *.path.toml.")]
 Json = Annotated[
     str | None, typer.Option("--json", metavar="FILE", help="Write the result as JSON; - for standard output.")
+]
+
+
+def _report(context: typer.Context, file: str | None) -> Report | None:
+    """Refuse a page that cannot be written, and keep the command as it was given."""
+    if file is None:
+        return None
+    require_report(file)
+    return Report(file=file, command=str(context.find_root().obj))
+
+
+ReportFile = Annotated[
+    Any,  # a name on its way in, a Report for the command
+    typer.Option(
+        "--report",
+        metavar="FILE.html",
+        parser=str,
+        callback=_report,
+        help="Write a page to file and to print: verdict, figures, pictures, inputs.",
+    ),
 ]
 Plot = Annotated[str | None, typer.Option("--plot", metavar="FILE", help="Draw the result: .png, .svg or .pdf.")]
 
@@ -56,22 +78,23 @@ def root(
 def demo(
     folder: Annotated[Path, typer.Argument(metavar="DIR", help="Where the files go.")] = Path("cardproof-demo"),
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Run the whole job on a made-up case; its files and results go to DIR."""
     from drivers.commands.demo import run
 
-    raise typer.Exit(run(folder, json_file=json))
+    raise typer.Exit(run(folder, json_file=json, report=report))
 
 
 @app.command()
-def check(cards: CardFiles, json: Json = None) -> None:
+def check(cards: CardFiles, json: Json = None, report: ReportFile = None) -> None:
     """Is a card admissible, and does it cover its service window?
 
     Example: cardproof check cardproof-demo/laboratory.card.toml
     """
     from drivers.commands.check import run
 
-    raise typer.Exit(run(cards, json_file=json))
+    raise typer.Exit(run(cards, json_file=json, report=report))
 
 
 @app.command()
@@ -98,6 +121,7 @@ def convert(
         typer.Option("--fit", metavar="METHOD", help="least-squares (default from a table's points) or minimax."),
     ] = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Write a card with another shift law, reference temperature or unit.
 
@@ -117,6 +141,7 @@ def convert(
             units=units or [],
             fit=fit,
             json_file=json,
+            report=report,
         )
     )
 
@@ -148,6 +173,7 @@ def drive(
     ] = "all",
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Stress, strain and temperature along a path.
 
@@ -166,6 +192,7 @@ def drive(
             keep=keep,
             plot=plot,
             json_file=json,
+            report=report,
         )
     )
 
@@ -182,6 +209,7 @@ def compare(
     ] = "1%",
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Do two cards say the same thing?
 
@@ -189,7 +217,9 @@ def compare(
     """
     from drivers.commands.compare import run
 
-    raise typer.Exit(run(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json))
+    raise typer.Exit(
+        run(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json, report=report)
+    )
 
 
 @app.command()
@@ -205,6 +235,7 @@ def steps(
     ] = None,
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """How small must the increments of a path be, by update rule?
 
@@ -213,7 +244,16 @@ def steps(
     from drivers.commands.steps import run
 
     raise typer.Exit(
-        run(card, path, tolerance=tolerance, shift_rule=shift_rule, recursion=recursion, plot=plot, json_file=json)
+        run(
+            card,
+            path,
+            tolerance=tolerance,
+            shift_rule=shift_rule,
+            recursion=recursion,
+            plot=plot,
+            json_file=json,
+            report=report,
+        )
     )
 
 
@@ -231,6 +271,7 @@ def record(
         str | None, typer.Option("-o", "--output", metavar="BASELINE", help="Else X.baseline.json beside X.card.toml.")
     ] = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Store the behaviour of a card as accepted.
 
@@ -238,7 +279,9 @@ def record(
     """
     from drivers.commands.record import run
 
-    raise typer.Exit(run(card, paths=path or [], tolerances=tolerance or [], output=output, json_file=json))
+    raise typer.Exit(
+        run(card, paths=path or [], tolerances=tolerance or [], output=output, json_file=json, report=report)
+    )
 
 
 @app.command()
@@ -254,6 +297,7 @@ def verify(
     seed: Annotated[int, typer.Option("--seed", metavar="N", help="Of the samples.", min=0)] = 0,
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Does a card still behave as accepted, and if not, what moved?
 
@@ -261,7 +305,9 @@ def verify(
     """
     from drivers.commands.verify import run
 
-    raise typer.Exit(run(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json))
+    raise typer.Exit(
+        run(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json, report=report)
+    )
 
 
 @app.command()
@@ -276,6 +322,7 @@ def audit(
     ] = None,
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Is a stress-update routine right?
 
@@ -283,7 +330,9 @@ def audit(
     """
     from drivers.commands.audit import run_either
 
-    raise typer.Exit(run_either(routine, replay_file=replay, card_file=card, quick=quick, plot=plot, json_file=json))
+    raise typer.Exit(
+        run_either(routine, replay_file=replay, card_file=card, quick=quick, plot=plot, json_file=json, report=report)
+    )
 
 
 @app.command()
@@ -300,6 +349,7 @@ def sweep(
     parquet: Annotated[str | None, typer.Option("--parquet", metavar="FILE", help="Write all rows as Parquet.")] = None,
     plot: Plot = None,
     json: Json = None,
+    report: ReportFile = None,
 ) -> None:
     """Many cards, paths, rules and sampled constants; stopped or killed, it goes on where it was.
 
@@ -317,6 +367,7 @@ def sweep(
             parquet=parquet,
             plot=plot,
             json_file=json,
+            report=report,
         )
     )
 
@@ -338,8 +389,11 @@ def main(arguments: list[str] | None = None) -> int:
     if isinstance(sys.stdout, io.TextIOWrapper):
         sys.stdout.reconfigure(errors="backslashreplace")  # a name that the terminal cannot spell is no reason to fail
     command = typer.main.get_command(app)
+    given = sys.argv[1:] if arguments is None else arguments
     try:
-        status = command.main(arguments, prog_name="cardproof", standalone_mode=False)
+        status = command.main(
+            given, prog_name="cardproof", standalone_mode=False, obj=shlex.join(["cardproof", *given])
+        )
         if status == INTERRUPTED:  # typer's own answer to an interrupt from the keyboard, which says nothing
             raise KeyboardInterrupt
         return status if isinstance(status, int) else 0

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 from drivers.battery import Window, battery, card_window, paths_window
 from drivers.commands.inputs import gather, read_all
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.commands.reporting import Report
 from drivers.foreign.routine_file import is_routine_file
 from drivers.library import is_folder
 from drivers.path import Path
@@ -19,6 +21,9 @@ from drivers.studies.slips import Slip, find_slips
 from drivers.studies.slips.evidence import Evidence
 from matlib.card import Card, read_card
 from matlib.errors import ParameterError
+
+if TYPE_CHECKING:
+    from drivers.report.page import Page
 
 __all__ = ["compare_cards", "likely_slips", "run", "what_to_compare"]
 
@@ -33,6 +38,7 @@ def run(
     tolerance: str = "1%",
     plot: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Compare two cards, or routines in their place, and say where they differ most."""
     require_folder(json_file)
@@ -42,11 +48,13 @@ def run(
 
         if plot is not None:
             raise ParameterError("--plot", "left out for folders", repr(plot))
-        return compare_library(file_a, file_b, paths=paths, tolerance=tolerance, json_file=json_file)
+        return compare_library(file_a, file_b, paths=paths, tolerance=tolerance, json_file=json_file, report=report)
     if is_routine_file(file_a) or is_routine_file(file_b):
         from drivers.commands.compare_routines import run as run_routines
 
-        return run_routines(file_a, file_b, paths=paths, tolerance=tolerance, plot=plot, json_file=json_file)
+        return run_routines(
+            file_a, file_b, paths=paths, tolerance=tolerance, plot=plot, json_file=json_file, report=report
+        )
     fraction = parse_tolerance(tolerance)
     a, b = read_all(read_card, [file_a, file_b])
     given, window = what_to_compare(a, b, paths)
@@ -57,7 +65,13 @@ def run(
 
         save_figure(comparison_figure(comparison, a, b), plot)
     tables = [*comparison_tables(comparison, a, b)[:1], *slip_tables(slips), *comparison_tables(comparison, a, b)[1:]]
-    return deliver(comparison_data(comparison, a, b, slips), tables, json_file)
+
+    def page(wanted: Report) -> Page:
+        from drivers.commands.compare_routines import page_of
+
+        return page_of(comparison, a, b, slips, paths, wanted)
+
+    return deliver(comparison_data(comparison, a, b, slips), tables, json_file, report, page)
 
 
 def what_to_compare(a: Card, b: Card, path_files: Sequence[str]) -> tuple[tuple[Path, ...], Window]:

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 from drivers.commands.output import deliver, require_folder
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.report.data import conversion_data
 from drivers.report.fit import fit_data, fit_tables
 from drivers.report.tables import conversion_tables
@@ -15,6 +16,9 @@ from matlib.documents import write_atomically
 from matlib.errors import ParameterError, UnknownNameError
 from matlib.shift.conversion import TARGETS, FitMethod
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit, parse_temperature
+
+if TYPE_CHECKING:
+    from drivers.report.page import Page
 
 __all__ = ["run"]
 
@@ -33,6 +37,7 @@ def run(
     units: Sequence[str] = (),
     fit: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Convert a card and write the new one."""
     require_folder(output)
@@ -54,9 +59,17 @@ def run(
         units=tuple(_find_any_unit(name) for name in units),
         fit=_parse_fit(fit),
     )
+    inputs = inputs_of(report, [(file, "card A")])  # before it is written over, where the new card takes its name
     write_atomically(output, converted.text())
     tables = [*conversion_tables(converted, output, unit), *fit_tables(converted)]
-    return deliver(conversion_data(converted, output) | {"fit": fit_data(converted)}, tables, json_file)
+
+    def page(wanted: Report) -> Page:
+        from drivers.report.convert_page import convert_page
+
+        return convert_page(converted, card, read_card(output), origin_of(wanted, inputs, [(output, "card B")]))
+
+    data = conversion_data(converted, output) | {"fit": fit_data(converted)}
+    return deliver(data, tables, json_file, report, page)
 
 
 def _parse_base(text: str | None) -> Literal[10, "e"] | None:

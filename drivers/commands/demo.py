@@ -2,20 +2,26 @@
 
 from __future__ import annotations
 
+import shlex
 from dataclasses import dataclass
 from importlib import resources
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from rich.console import RenderableType
 from rich.text import Text
 
+from drivers.baseline_file import Baseline, write_baseline
+from drivers.battery import battery, card_window
 from drivers.commands.compare import compare_cards, likely_slips, what_to_compare
 from drivers.commands.output import deliver, require_folder, save_figure
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.history import csv_text
 from drivers.path_file import read_path
 from drivers.point import drive
 from drivers.report.data import checks_data, comparison_data, envelope, json_text
 from drivers.report.tables import CAUTION, findings_table, percent, plain_table, slip_tables
+from drivers.studies.baseline import record_paths
 from drivers.studies.compare import Comparison
 from drivers.studies.slips import Slip
 from matlib.admissibility import check_card
@@ -26,10 +32,13 @@ from matlib.errors import Fault, FileError
 from matlib.units import STRESS, TEMPERATURE
 from matlib.viscoelastic import LinearViscoelastic
 
+if TYPE_CHECKING:
+    from drivers.report.page import Page
+
 __all__ = ["run"]
 
 SHIPPED = (
-    *("laboratory.card.toml", "slip.card.toml", "thermal-cycles.path.toml"),
+    *("laboratory.card.toml", "slip.card.toml", "thermal-cycles.path.toml", "library.sweep.toml"),
     *("routine.c", "routine.f90", "routine.py", "c.routine.toml", "f90.routine.toml", "python.routine.toml"),
 )
 TOLERANCE = 0.01
@@ -55,7 +64,7 @@ CASES = (
 )
 
 
-def run(folder: Path, *, json_file: str | None = None) -> int:
+def run(folder: Path, *, json_file: str | None = None, report: Report | None = None) -> int:
     """Write the demo's files to a folder, run check, convert, drive and compare on them, and show the verdicts."""
     require_folder(json_file)
     _make_folder(folder)
@@ -67,6 +76,7 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
     write_atomically(folder / "check.json", json_text(checks_data([(laboratory, findings)])))
     _convert(laboratory, folder)
     _drive(laboratory, folder)
+    _record(laboratory, folder)
     results = [(case, *_compare(laboratory, folder, case)) for case in CASES]
     comparisons = [(case, comparison) for case, comparison, _ in results]
     slips = [slip for _, _, found in results for slip in found[:1]]
@@ -81,7 +91,7 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
         _verdicts(comparisons, laboratory),
         Text("\n3. Which mistake explains the difference?", style="bold"),
         *slip_tables(slips),
-        Text(f"\nCards, path, history.csv, pictures and results in JSON are in {folder}. The case is invented."),
+        Text(f"\nCards, path, baseline, history, pictures and results in JSON are in {folder}. The case is invented."),
         Text(CAUTION, style="italic"),
     ]
     as_expected = all(comparison.same == case.expected for case, comparison in comparisons)
@@ -89,7 +99,21 @@ def run(folder: Path, *, json_file: str | None = None) -> int:
         {"file": case.file, "same": comparison.same, "relative": comparison.worst.relative}
         for case, comparison in comparisons
     ]
-    return deliver(envelope("demo", as_expected, folder=str(folder), cases=cases), tables, json_file)
+    wanted = report or Report(file=str(folder / "report.html"), command=shlex.join(["cardproof", "demo", str(folder)]))
+
+    def page(wanted: Report) -> Page:
+        from drivers.report.demo_page import DemoCase, demo_page
+
+        made = [
+            DemoCase(card=card, made=case.made, expected=case.expected, comparison=comparison, slips=found)
+            for case, comparison, found in results
+            for card in [read_card(folder / case.file)]
+        ]
+        inputs = inputs_of(wanted, [(str(folder / name), "of the demonstration") for name in SHIPPED])
+        outputs = [(str(folder / name), "card") for name in ("converted.card.toml", "arrhenius.card.toml")]
+        return demo_page(laboratory, made, findings, origin_of(wanted, inputs, outputs))
+
+    return deliver(envelope("demo", as_expected, folder=str(folder), cases=cases), tables, json_file, wanted, page)
 
 
 def _make_folder(folder: Path) -> None:
@@ -116,6 +140,14 @@ def _drive(laboratory: Card, folder: Path) -> None:
     text = csv_text(history, stress=laboratory.stress_unit, temperature=laboratory.temperature_unit)
     write_atomically(folder / "history.csv", text)
     save_figure(drive_figure(history, laboratory, path), str(folder / "thermal-cycles.png"))
+
+
+def _record(laboratory: Card, folder: Path) -> None:
+    """The laboratory's behaviour, as accepted."""
+    material = laboratory.material()
+    paths = battery(material, card_window(laboratory, material))
+    recorded = record_paths(material, paths, [TOLERANCE] * len(paths))
+    write_baseline(folder / "laboratory.baseline.json", Baseline.of(laboratory, recorded))
 
 
 def _compare(laboratory: Card, folder: Path, case: _Case) -> tuple[Comparison, tuple[Slip, ...]]:

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from drivers.commands.failing import with_routine
 from drivers.commands.inputs import gather, read_subject
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.foreign.foreign import ForeignRoutine
 from drivers.foreign.routine_file import RoutineFile
 from drivers.history import History, csv_text
@@ -24,6 +27,9 @@ from matlib.recursion import find_recursion
 from matlib.routine import Routine
 from matlib.shift import find_shift_rule
 
+if TYPE_CHECKING:
+    from drivers.report.page import File, Page
+
 __all__ = ["run"]
 
 LARGEST_HISTORY = 5_000_000  # rows
@@ -42,6 +48,7 @@ def run(
     keep: str = "all",
     plot: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Drive a card, or a routine, along a path; write its history and a picture where they are asked for."""
     for file in (output, json_file):
@@ -56,6 +63,15 @@ def run(
     find_recursion(rule.recursion)
     subject, path = gather([lambda: read_subject(card_file), lambda: read_path(path_file)])
     assert isinstance(path, Path)
+    inputs = inputs_of(report, [(card_file, "card or routine"), (path_file, "path")])
+
+    def hand_over(history: History, how: Rule | Reference) -> int:
+        assert isinstance(path, Path)
+        assert isinstance(subject, Card | RoutineFile)
+        return _hand_over(
+            history, subject, path, how, output=output, plot=plot, json_file=json_file, report=report, inputs=inputs
+        )
+
     most = LARGEST_EXACT if exact else LARGEST_HISTORY
     if path.increment_count > most and (exact or kept == "all"):
         expected = "fewer increments in the path" if exact else "ends or a number"
@@ -68,7 +84,7 @@ def run(
         def task() -> int:
             with ForeignRoutine(subject) as routine:
                 history = _driven(routine, path, kept)
-            return _hand_over(history, subject, path, OWN, output=output, plot=plot, json_file=json_file)
+            return hand_over(history, OWN)
 
         return with_routine("drive", json_file, task)
     assert isinstance(subject, Card)
@@ -79,7 +95,7 @@ def run(
     else:
         history = _driven(rule.routine(material), path, kept)
     how = reference if exact else rule
-    return _hand_over(history, subject, path, how, output=output, plot=plot, json_file=json_file)
+    return hand_over(history, how)
 
 
 def _driven(routine: Routine, path: Path, kept: str | int) -> History:
@@ -96,6 +112,8 @@ def _hand_over(
     output: str | None,
     plot: str | None,
     json_file: str | None,
+    report: Report | None,
+    inputs: tuple[File, ...],
 ) -> int:
     stress, temperature = subject.stress_unit, subject.temperature_unit
     if output is not None:
@@ -107,7 +125,14 @@ def _hand_over(
     data = drive_data(history, subject, path, file=output, how=how)
     method = str(how) if isinstance(how, Rule) else _exactness(how)
     title = f"{subject.name} on {path.name} ({path.mode.name}; {method})"
-    return deliver(data, history_tables(history.at_segment_ends(), title, stress, temperature), json_file)
+
+    def page(wanted: Report) -> Page:
+        from drivers.report.drive_page import drive_page
+
+        return drive_page(history, subject, path, method, origin_of(wanted, inputs, [(output, "history")]))
+
+    tables = history_tables(history.at_segment_ends(), title, stress, temperature)
+    return deliver(data, tables, json_file, report, page)
 
 
 def _exactness(reference: Reference) -> str:

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Callable, Iterable
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from drivers.commands.reporting import Report, write_report
 from matlib.documents import write_atomically
 from matlib.errors import Fault, FileError, ParameterError
 
@@ -13,13 +14,21 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
     from rich.console import RenderableType
 
+    from drivers.report.page import Page
+
 __all__ = ["FORMATS", "deliver", "parse_tolerance", "require_picture", "save_figure"]
 
 FORMATS = (".png", ".svg", ".pdf")
 
 
-def deliver(data: dict[str, Any], tables: Iterable[RenderableType], json_file: str | None) -> int:
-    """Show tables, write JSON, and give the exit status that belongs to the verdict.
+def deliver(
+    data: dict[str, Any],
+    tables: Iterable[RenderableType],
+    json_file: str | None,
+    report: Report | None = None,
+    page: Callable[[Report], Page] | None = None,
+) -> int:
+    """Show tables, write JSON and the page, and give the exit status that belongs to the verdict.
 
     Parameters
     ----------
@@ -28,6 +37,10 @@ def deliver(data: dict[str, Any], tables: Iterable[RenderableType], json_file: s
     tables : iterable of renderable
     json_file : str or None
         ``-`` writes the JSON, and nothing else, to standard output.
+    report : Report, optional
+        The page that was asked for.
+    page : callable, optional
+        Makes it.
 
     Returns
     -------
@@ -42,12 +55,16 @@ def deliver(data: dict[str, Any], tables: Iterable[RenderableType], json_file: s
             print(text, end="", flush=True)
         else:
             write_atomically(json_file, text)
+    if report is not None and page is not None:
+        write_report(report, page)
     if json_file != "-":
         from rich.console import Console
 
         console = Console(highlight=False, markup=False, emoji=False)
         for table in tables:
             console.print(table)
+        if report is not None and page is not None:
+            console.print(f"The report is {report.file}.")
     return 0 if data["verdict"] == "holds" else 1
 
 

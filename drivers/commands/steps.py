@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from drivers.commands.failing import with_routine
 from drivers.commands.inputs import gather, read_subject
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.foreign.foreign import ForeignRoutine
 from drivers.foreign.routine_file import RoutineFile
 from drivers.path import Path
@@ -19,6 +22,9 @@ from matlib.card import Card
 from matlib.errors import ParameterError
 from matlib.recursion import RECURSIONS, find_recursion
 from matlib.shift import SHIFT_RULES, find_shift_rule
+
+if TYPE_CHECKING:
+    from drivers.report.page import Page
 
 __all__ = ["run"]
 
@@ -37,6 +43,7 @@ def run(
     recursion: str | None = None,
     plot: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Say what increments a path needs; exit 0 where its own are small enough."""
     require_folder(json_file)
@@ -47,13 +54,28 @@ def run(
             find(name)
     subject, path = gather([lambda: read_subject(card_file), lambda: read_path(path_file)])
     assert isinstance(path, Path)
+
+    def hand_over(result: StepsResult, subject: Subject) -> int:
+        if plot is not None:
+            from drivers.report.steps_plot import steps_figure
+
+            save_figure(steps_figure(result), plot)
+
+        def page(wanted: Report) -> Page:
+            from drivers.report.steps_page import steps_page
+
+            inputs = inputs_of(wanted, [(card_file, "card or routine"), (path_file, "path")])
+            return steps_page(result, subject, origin_of(wanted, inputs))
+
+        return deliver(steps_data(result, subject), steps_tables(result, subject), json_file, report, page)
+
     if isinstance(subject, RoutineFile):
         if shift_rule or recursion:
             option = "--shift-rule" if shift_rule else "--recursion"
             raise ParameterError(
                 option, "given with a card only: a routine has a rule of its own", shift_rule or recursion
             )
-        return with_routine("steps", json_file, lambda: _of_routine(subject, path, fraction, plot, json_file))
+        return with_routine("steps", json_file, lambda: hand_over(_of_routine(subject, path, fraction), subject))
     assert isinstance(subject, Card)
     rule = Rule(shift_rule=shift_rule or "integrated", recursion=recursion or "exponential")
     rules = [
@@ -63,22 +85,13 @@ def run(
     ]
     with progress(f"increments of {path.name}", RUNS_OF_A_RULE * len(rules) + OTHER_RUNS) as advance:
         result = steps(subject.material(), path, tolerance=fraction, rule=rule, rules=rules, progress=advance)
-    return _hand_over(result, subject, plot, json_file)
+    return hand_over(result, subject)
 
 
-def _of_routine(described: RoutineFile, path: Path, tolerance: float, plot: str | None, json_file: str | None) -> int:
+def _of_routine(described: RoutineFile, path: Path, tolerance: float) -> StepsResult:
     material = None if described.card is None else described.card.material()
     with ForeignRoutine(described) as routine, progress(f"increments of {path.name}", RUNS_OF_ROUTINE) as advance:
         runner = RoutineRunner(
             routine=routine, claimed_order=routine.order, material=material, own_accuracy=OWN_SHARE * tolerance
         )
-        result = steps(runner, path, tolerance=tolerance, rule=OWN, rules=[OWN], progress=advance)
-    return _hand_over(result, described, plot, json_file)
-
-
-def _hand_over(result: StepsResult, subject: Subject, plot: str | None, json_file: str | None) -> int:
-    if plot is not None:
-        from drivers.report.steps_plot import steps_figure
-
-        save_figure(steps_figure(result), plot)
-    return deliver(steps_data(result, subject), steps_tables(result, subject), json_file)
+        return steps(runner, path, tolerance=tolerance, rule=OWN, rules=[OWN], progress=advance)

@@ -4,8 +4,10 @@ from __future__ import annotations
 
 import os
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.report.progress import progress
 from drivers.report.sweep import sweep_data, sweep_figure, sweep_tables
 from drivers.sweep.export import csv_of, parquet_of
@@ -14,6 +16,9 @@ from drivers.sweep.run import run_sweep
 from drivers.sweep.sweep_file import SweepFile, read_sweep
 from matlib.documents import write_atomically
 from matlib.errors import ParameterError
+
+if TYPE_CHECKING:
+    from drivers.report.page import Page
 
 __all__ = ["run"]
 
@@ -30,6 +35,7 @@ def run(
     parquet: str | None = None,
     plot: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Run what is left of a sweep; exit 0 where every case ran and is within the tolerance."""
     for output in (json_file, csv, parquet):
@@ -50,7 +56,16 @@ def run(
         write_atomically(parquet, parquet_of(result.rows))
     if plot is not None:
         save_figure(sweep_figure(result), plot)
-    return deliver(sweep_data(result, csv, parquet), sweep_tables(result), json_file)
+
+    def page(wanted: Report) -> Page:
+        from drivers.report.sweep_page import sweep_page
+
+        swept = plan.sweep
+        files = [(file, "sweep"), *((card, "card") for card in swept.cards), *((path, "path") for path in swept.paths)]
+        outputs = [(csv, "all rows"), (parquet, "all rows")]
+        return sweep_page(result, origin_of(wanted, inputs_of(wanted, files), outputs))
+
+    return deliver(sweep_data(result, csv, parquet), sweep_tables(result), json_file, report, page)
 
 
 def _cores() -> int:

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 from drivers.baseline_file import Baseline, read_baseline
 from drivers.commands.inputs import gather
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
+from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.library import baseline_beside, is_folder
 from drivers.report.baseline import Verified, verified_data, verified_tables
 from drivers.report.progress import progress
@@ -16,6 +19,9 @@ from drivers.studies.slips import Slip
 from drivers.studies.spread import Scatter, scatter
 from matlib.card import Card, read_card
 from matlib.errors import CardproofError, FaultyInputError, ParameterError
+
+if TYPE_CHECKING:
+    from drivers.report.page import Page
 
 __all__ = ["run", "verify_card"]
 
@@ -31,6 +37,7 @@ def run(
     seed: int = 0,
     plot: str | None = None,
     json_file: str | None = None,
+    report: Report | None = None,
 ) -> int:
     """Hold a card against its baseline, or every card of a folder against the baseline beside it."""
     require_folder(json_file)
@@ -42,7 +49,7 @@ def run(
                 raise ParameterError(name, "left out for a folder: each card has its own", repr(value))
         from drivers.commands.library import verify_library
 
-        return verify_library(card_file, json_file=json_file)
+        return verify_library(card_file, json_file=json_file, report=report)
     file = baseline_file or baseline_beside(card_file)
     card, baseline = gather([lambda: read_card(card_file), lambda: read_baseline(file)])
     assert isinstance(card, Card)
@@ -52,7 +59,14 @@ def run(
         from drivers.report.baseline_plot import verified_figure
 
         save_figure(verified_figure(verified), plot)
-    return deliver(verified_data(verified), verified_tables(verified), json_file)
+
+    def page(wanted: Report) -> Page:
+        from drivers.report.baseline_page import verified_page
+
+        files = [(card_file, "card"), (file, "baseline"), *([] if spread is None else [(spread, "spread")])]
+        return verified_page(verified, origin_of(wanted, inputs_of(wanted, files)))
+
+    return deliver(verified_data(verified), verified_tables(verified), json_file, report, page)
 
 
 def verify_card(

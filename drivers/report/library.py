@@ -12,7 +12,7 @@ from rich.text import Text
 from drivers.report.data import envelope
 from drivers.report.tables import percent, plain_table, verdict_line
 
-__all__ = ["Entry", "library_data", "library_tables"]
+__all__ = ["Entry", "library_data", "library_tables", "worst_first"]
 
 Outcome = Literal["holds", "falls short", "missing", "unreadable"]
 ORDER: dict[Outcome, int] = {"unreadable": 0, "missing": 1, "falls short": 2, "holds": 3}
@@ -46,7 +46,8 @@ class Entry:
     content: dict[str, Any] = field(default_factory=dict)
 
 
-def _worst_first(entries: Sequence[Entry]) -> list[Entry]:
+def worst_first(entries: Sequence[Entry]) -> list[Entry]:
+    """By outcome, then by weight, then by name."""
     return sorted(entries, key=lambda entry: (ORDER[entry.outcome], -entry.weight, entry.name))
 
 
@@ -54,7 +55,7 @@ def library_data(command: str, key: str, entries: Sequence[Entry]) -> dict[str, 
     """All entries under a key, the worst first."""
     rows = [
         {"name": entry.name, "outcome": entry.outcome, "relative": entry.relative, "note": entry.note, **entry.content}
-        for entry in _worst_first(entries)
+        for entry in worst_first(entries)
     ]
     return envelope(command, _holds(entries), **{key: rows})
 
@@ -71,7 +72,7 @@ def library_tables(what: str, entries: Sequence[Entry]) -> list[RenderableType]:
     measured = any(entry.relative is not None for entry in entries)
     columns = [("card", "left"), ("", "left"), *([("difference", "right")] if measured else []), ("what", "left")]
     table = plain_table("", columns)
-    for entry in _worst_first(entries):
+    for entry in worst_first(entries):
         row = [Text(entry.name), Text(entry.outcome, style=STYLES[entry.outcome])]
         if measured:
             row.append(Text("" if entry.relative is None else percent(entry.relative)))

@@ -7,7 +7,7 @@ import hashlib
 import io
 import platform
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import UTC, datetime
 from importlib import resources
 from pathlib import Path
@@ -19,7 +19,7 @@ from matlib.version import __version__
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-__all__ = ["Fact", "Input", "Page", "PageTable", "Picture", "html", "input_of", "picture"]
+__all__ = ["Fact", "File", "Origin", "Page", "PageTable", "Picture", "file_of", "html", "picture"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -32,12 +32,29 @@ class Fact:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Input:
-    """A file that went in: its name, what it is, and the sha256 of its bytes."""
+class File:
+    """A file that went in or came out: its name, what it is, and the sha256 of its bytes."""
 
     file: str
     what: str
     digest: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Origin:
+    """What a page was made from.
+
+    Parameters
+    ----------
+    command : str
+        To run again, as it was given.
+    inputs, outputs : sequence of File
+        Read, and written.
+    """
+
+    command: str = ""
+    inputs: Sequence[File] = ()
+    outputs: Sequence[File] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -57,6 +74,10 @@ class Picture:
     title: str
     finding: str
 
+    def renamed(self, title: str) -> Picture:
+        """The same picture under another title."""
+        return replace(self, title=title)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PageTable:
@@ -69,14 +90,19 @@ class PageTable:
         With units.
     rows : sequence of sequence of str
         The first cell of a row is its heading.
-    numeric : sequence of int
-        Columns that are set to the right.
+    numeric, wide : sequence of int
+        Columns that are set to the right, and columns of sentences.
     """
 
     caption: str
     headers: Sequence[str]
     rows: Sequence[Sequence[str]]
     numeric: Sequence[int] = ()
+    wide: Sequence[int] = ()
+
+    def kind(self, column: int) -> str:
+        """How a column is set."""
+        return "number" if column in self.numeric else "wide" if column in self.wide else "text"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -86,7 +112,7 @@ class Page:
     Parameters
     ----------
     title : str
-        What was checked.
+        What was compared, and with what.
     holds : bool or None
         The verdict; None for a command that makes something and judges nothing.
     verdict : str
@@ -96,9 +122,7 @@ class Page:
     facts : sequence of Fact
     pictures : sequence of Picture
     tables : sequence of PageTable
-    inputs : sequence of Input
-    command : str
-        To run again.
+    origin : Origin
     settings : dict of str
         Whatever else reproduces the result.
     """
@@ -110,24 +134,33 @@ class Page:
     facts: Sequence[Fact] = ()
     pictures: Sequence[Picture] = ()
     tables: Sequence[PageTable] = ()
-    inputs: Sequence[Input] = ()
-    command: str = ""
+    origin: Origin = field(default_factory=Origin)
     settings: dict[str, str] = field(default_factory=dict)
 
+    @property
+    def word(self) -> str:
+        """The verdict in a word."""
+        return "Done" if self.holds is None else "Holds" if self.holds else "Falls short"
 
-def input_of(file: str | Path, what: str) -> Input:
-    """An input file with its digest."""
+
+def file_of(file: str | Path, what: str) -> File:
+    """A file with its digest."""
     digest = hashlib.sha256(Path(file).read_bytes()).hexdigest()
-    return Input(file=str(file), what=what, digest=digest)
+    return File(file=str(file), what=what, digest=digest)
 
 
 def picture(figure: Figure, title: str, finding: str) -> Picture:
     """Turn a figure into a picture of a page: SVG whose text stays text, the same bytes for the same figure."""
+    import warnings
+
     import matplotlib as mpl
 
     buffer = io.StringIO()
-    with mpl.rc_context({"svg.fonttype": "none", "svg.hashsalt": "cardproof"}):
-        figure.savefig(buffer, format="svg", metadata={"Date": None})
+    with mpl.rc_context({"svg.fonttype": "none", "svg.hashsalt": "cardproof"}), warnings.catch_warnings():
+        warnings.filterwarnings(
+            "ignore", message="Glyph .* missing", category=UserWarning
+        )  # the reader's fonts draw it
+        figure.savefig(buffer, format="svg", transparent=True, metadata={"Date": None, "Creator": None})
     encoded = base64.b64encode(buffer.getvalue().encode("utf-8")).decode("ascii")
     return Picture(data=f"data:image/svg+xml;base64,{encoded}", title=title, finding=finding)
 

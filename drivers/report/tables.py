@@ -28,6 +28,7 @@ __all__ = [
     "percent",
     "place_text",
     "plain_table",
+    "remaining_text",
     "slip_tables",
     "temperature_text",
     "time_text",
@@ -106,15 +107,32 @@ def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[R
             low, high = (temperature_text(T, unit) for T in conversion.fitted_range)
             text += f", over {low} to {high}"
         line = Text.assemble(("inexact", "bold yellow"), text)
-    table = plain_table("", [("constant", "left"), ("value", "right")])
+    table = plain_table("", [("constant", "left"), ("value", "right"), ("unit", "left")])
     for key, value in converted.shift.items():
         shown = f"{value:.10g}" if isinstance(value, float) else str(value)
         if key == "points":
             shown = f"{len(value)} points"
-        table.add_row(key, shown)
+        table.add_row(key, shown, _constant_unit(key, converted))
     if conversion.time_factor != 1.0:
-        table.add_row("times multiplied by", f"{conversion.time_factor:.10g}")
+        table.add_row("times multiplied by", f"{conversion.time_factor:.10g}", "-")
     return [line, table]
+
+
+def _constant_unit(key: str, converted: ConvertedCard) -> str:
+    """Unit of a constant of the new card."""
+    temperature = converted.units["temperature"]
+    match key:
+        case "T_ref" | "T_inf" | "C2" | "B" | "measured":
+            return temperature
+        case "activation_energy":
+            return str(converted.shift.get("energy_unit", "kJ/mol"))
+        case "gas_constant":
+            return "J/(mol K)"
+        case "points":
+            return f"{temperature}, -"
+        case "C1" | "base":
+            return "-"
+    return ""
 
 
 def _thinned(count: int) -> list[int]:
@@ -131,7 +149,7 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
     shown = [c for c in range(6) if abs(strains[:, c]).max() > 0.0]
     loaded = [c for c in range(6) if abs(history.stress_components[:, c]).max() > 1e-12 * (history.peak_stress or 1.0)]
     columns = [("segment", "left"), ("time [s]", "right"), (f"T [{temperature.name}]", "right")]
-    columns += [(STRAIN_COMPONENTS[c], "right") for c in shown]
+    columns += [(f"{STRAIN_COMPONENTS[c]} [-]", "right") for c in shown]
     columns += [(f"{STRESS_COMPONENTS[c]} [{stress.name}]", "right") for c in loaded]
     if history.bound is not None:
         columns.append((f"bound [{stress.name}]", "right"))
@@ -164,12 +182,17 @@ def slip_tables(slips: Sequence[Slip]) -> list[RenderableType]:
     """The likely slips, the best explanation first."""
     lines: list[RenderableType] = []
     for slip in slips[:SLIPS_SHOWN]:
-        left = f"Without it {percent(slip.remaining)} of the peak is left."
-        if slip.remaining <= 1e-9:
-            left = "Without it nothing but rounding is left."
+        left = f"{remaining_text(slip)}."
         twins = f" The evidence cannot tell it from {', '.join(slip.twins)}." if slip.twins else ""
         lines.append(Text.assemble((f"Likely slip: {slip.id}. ", "bold"), f"{slip.explanation} {left}{twins}"))
     return lines
+
+
+def remaining_text(slip: Slip) -> str:
+    """What is left of a difference without a slip."""
+    if slip.remaining <= 1e-9:
+        return "Without it nothing but rounding is left"
+    return f"Without it {percent(slip.remaining)} of the peak is left"
 
 
 def _same_text(comparison: Comparison, worst: PathComparison) -> str:
