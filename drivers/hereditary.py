@@ -12,186 +12,58 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from drivers.ramp_pieces import EPS, LONGEST, Clock, Pieces, clock_of, cut_pieces, first_pieces, sums_by_row
 from matlib.arrays import FloatArray
 from matlib.shift.base import ShiftLaw
 
 __all__ = ["Gains", "bracketed_gains"]
 
-EPS = float(np.finfo(np.float64).eps)
-CLOCK_ROUNDING = 64.0 * EPS
-"""Relative rounding of a reduced time itself: thirteen to fourteen digits, whatever the law's closed form or quadrature."""
-
 LARGEST_WORK = 6_000_000
-"""Subdivisions times terms at most; the bound stays true where this ends the subdivision, only wider."""
+"""Pieces times terms at most; the bound stays true where this ends the cutting, only wider."""
 
-CHUNK = 400_000
+CLOCK_WORK = 8  # what the clock of a piece costs, in terms
+
+CHUNK = 200_000  # pieces times terms that are worked on at once
 ROUNDS = 24
+LARGEST_R = 1e300
+FORGOTTEN = 800.0  # exp(-800) is zero: a rounding of a longer reduced time cannot matter
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Gains:
     r"""What an increment does to :math:`v_i = \int \exp(-(\xi-\xi')/\tau_i)\,du` and to :math:`q = \int (\xi-\xi')\,du`.
 
+    ``v_end = decay v + gain du`` and ``q_end = q + dxi u + lag du`` [s], each factor with two half-widths: of the bracket,
+    which cutting brings down, and of rounding.
+
     Parameters
     ----------
-    dxi : ndarray, shape (n,)
+    dxi, dxi_rounding : ndarray, shape (n,)
         Reduced time of each increment [s].
-    clock_error : ndarray, shape (n,)
-        Relative rounding of `dxi`, the conditioning of the shift law included.
-    decay, decay_error, gain, gain_error : ndarray, shape (n, m)
-        ``v_end = decay v + gain du``, each with its half-width.
-    lag, lag_error : ndarray, shape (n,)
-        ``q_end = q + dxi u + lag du`` [s], with its half-width.
-    pieces : int
-        Pieces that the increments were cut into.
+    decay, decay_rounding, gain, gain_gap, gain_rounding : ndarray, shape (n, m)
+    lag, lag_gap, lag_rounding : ndarray, shape (n,)
+        [s].
+    pieces : Pieces
+        What the increments were cut into.
+    within_budget : bool
+        Whether the sum of weighted half-gaps met the budget; False where the work was too much.
     ordered : bool
         Whether every mean rate lay between its end rates, as the law promises between its knots.
     """
 
     dxi: FloatArray
-    clock_error: FloatArray
+    dxi_rounding: FloatArray
     decay: FloatArray
-    decay_error: FloatArray
+    decay_rounding: FloatArray
     gain: FloatArray
-    gain_error: FloatArray
+    gain_gap: FloatArray
+    gain_rounding: FloatArray
     lag: FloatArray
-    lag_error: FloatArray
-    pieces: int
+    lag_gap: FloatArray
+    lag_rounding: FloatArray
+    pieces: Pieces
+    within_budget: bool
     ordered: bool
-
-
-@dataclass(slots=True)
-class _Pieces:
-    """Straight pieces of increments, in time order: increment, start and end as fractions of it."""
-
-    row: np.ndarray
-    start: FloatArray
-    end: FloatArray
-
-
-@dataclass(slots=True)
-class _Clock:
-    """Reduced time over pieces: its length, the end rates times the duration, and what follows in the same increment."""
-
-    share: FloatArray
-    dxi: FloatArray
-    first: FloatArray
-    last: FloatArray
-    after: FloatArray
-
-
-def _mean_exp(x: FloatArray) -> FloatArray:
-    """(1 - exp(-x))/x, 1 at 0."""
-    positive = np.where(x > 0.0, x, 1.0)
-    return np.where(x > 0.0, -np.expm1(-positive) / positive, 1.0)
-
-
-def _initial(T: FloatArray, knots: tuple[float, ...]) -> _Pieces:
-    """One piece an increment, cut where the temperature passes a knot of the law."""
-    rows, starts, ends = [], [], []
-    low, high = np.minimum(T[:-1], T[1:]), np.maximum(T[:-1], T[1:])
-    inner = np.asarray(knots)
-    has_knot = np.zeros(low.size, dtype=np.bool_)
-    if inner.size:
-        has_knot = np.searchsorted(inner, high, "left") > np.searchsorted(inner, low, "right")
-    plain = np.flatnonzero(~has_knot)
-    rows.append(plain)
-    starts.append(np.zeros(plain.size))
-    ends.append(np.ones(plain.size))
-    for k in np.flatnonzero(has_knot):
-        between = inner[(inner > low[k]) & (inner < high[k])]
-        cuts = np.sort((between - T[k]) / (T[k + 1] - T[k]))
-        edges = np.unique(np.clip(np.concatenate([[0.0], cuts, [1.0]]), 0.0, 1.0))
-        rows.append(np.full(edges.size - 1, k))
-        starts.append(edges[:-1])
-        ends.append(edges[1:])
-    row = np.concatenate(rows)
-    order = np.argsort(row, kind="stable")
-    return _Pieces(row[order], np.concatenate(starts)[order], np.concatenate(ends)[order])
-
-
-def _clock(law: ShiftLaw, duration: FloatArray, T: FloatArray, pieces: _Pieces) -> tuple[_Clock, bool]:
-    row = pieces.row
-    step = T[1:] - T[:-1]
-    T_start, T_end = T[row] + pieces.start * step[row], T[row] + pieces.end * step[row]
-    T_end = np.where(pieces.end == 1.0, T[row + 1], T_end)
-    share = pieces.end - pieces.start
-    seconds = share * duration[row]
-    first, last = np.exp(-law.ln_shift(T_start)), np.exp(-law.ln_shift(T_end))
-    mean = law.mean_rate(T_start, T_end)
-    low, high = np.minimum(first, last), np.maximum(first, last)
-    slack = 1.0 + CLOCK_ROUNDING + 4.0 * EPS * np.abs(np.log(np.maximum(high, 1e-300)))
-    ordered = bool(np.all((mean <= high * slack) & (mean * slack >= low)))
-    mean = np.clip(mean, low, high)
-    dxi = mean * seconds
-    total = np.cumsum(dxi[::-1])[::-1]
-    # What follows inside the same increment: sums from the back, less what belongs to later increments.
-    after = _following(row, dxi) if row.size else total
-    return _Clock(share, dxi, first * seconds, last * seconds, after), ordered
-
-
-def _following(row: np.ndarray, dxi: FloatArray) -> FloatArray:
-    """Sum of `dxi` over the later pieces of the same increment."""
-    after = np.zeros_like(dxi)
-    counts = np.bincount(row)
-    if counts.max(initial=0) <= 1:
-        return after
-    ends = np.cumsum(counts)
-    for k in np.flatnonzero(counts > 1):
-        part = slice(ends[k] - counts[k], ends[k])
-        after[part][:-1] = np.cumsum(dxi[part][::-1])[::-1][1:]
-    return after
-
-
-def _bracket(clock: _Clock, times: FloatArray, part: slice) -> tuple[FloatArray, FloatArray]:
-    """Share of each piece in the gain of its increment, by the chord and by the two tangents, shape (pieces, m)."""
-    dxi, first, last = (a[part, np.newaxis] for a in (clock.dxi, clock.first, clock.last))
-    weight = clock.share[part, np.newaxis] * np.exp(-clock.after[part, np.newaxis] / times)
-    chord = _mean_exp(dxi / times)
-    # The tangents meet after a fraction p of the piece.
-    bend = last - first
-    p = np.clip(np.where(bend != 0.0, (last - dxi) / np.where(bend != 0.0, bend, 1.0), 0.5), 0.0, 1.0)
-    x_last, x_first = last * (1.0 - p) / times, first * p / times
-    tangents = (1.0 - p) * _mean_exp(x_last) + p * np.exp(-x_last) * _mean_exp(x_first)
-    return weight * chord, weight * np.where(bend != 0.0, tangents, chord)
-
-
-def _lags(clock: _Clock) -> tuple[FloatArray, FloatArray]:
-    """Share of each piece in the mean of xi_end - xi(s), by the chord and by the tangents, shape (pieces,)."""
-    bend = clock.last - clock.first
-    safe = np.where(bend != 0.0, bend, 1.0)
-    p = np.clip(np.where(bend != 0.0, (clock.last - clock.dxi) / safe, 0.5), 0.0, 1.0)
-    chord = 0.5 * clock.dxi
-    after_bend = clock.last * (1.0 - p)
-    tangents = (1.0 - p) * 0.5 * after_bend + p * (after_bend + 0.5 * clock.first * p)
-    tangents = np.where(bend != 0.0, tangents, chord)
-    return clock.share * (chord + clock.after), clock.share * (tangents + clock.after)
-
-
-def _widths(clock: _Clock, row: np.ndarray, times: FloatArray, importance: FloatArray) -> FloatArray:
-    """Weighted half-gap of each piece, shape (pieces,)."""
-    widths = np.zeros(row.size)
-    size = max(1, CHUNK // max(times.size, 1))
-    bent = np.flatnonzero(clock.first != clock.last)
-    for start in range(0, bent.size, size):
-        some = bent[start : start + size]
-        chosen = _Clock(*(getattr(clock, name)[some] for name in ("share", "dxi", "first", "last", "after")))
-        chord, tangents = _bracket(chosen, times, slice(None))
-        widths[some] = np.einsum("ij,ij->i", np.abs(chord - tangents), importance[row[some]])
-    return widths
-
-
-def _cut(pieces: _Pieces, widths: FloatArray, fair: float) -> _Pieces:
-    """Cut each piece that is wider than its fair share; its width falls with the cube of the number of parts."""
-    parts = np.where(widths > fair, np.clip(np.ceil(np.cbrt(widths / fair)), 2, 8), 1).astype(np.int64)
-    which = np.repeat(np.arange(parts.size), parts)
-    place = np.arange(which.size) - np.repeat(np.cumsum(parts) - parts, parts)
-    span = pieces.end - pieces.start
-    edge = place / parts[which]
-    start = pieces.start[which] + span[which] * edge
-    last = place + 1 == parts[which]
-    end = np.where(last, pieces.end[which], pieces.start[which] + span[which] * ((place + 1) / parts[which]))
-    return _Pieces(pieces.row[which], start, end)
 
 
 def bracketed_gains(
@@ -199,10 +71,13 @@ def bracketed_gains(
     duration: FloatArray,
     T: FloatArray,
     times: FloatArray,
-    importance: FloatArray,
-    budget: float,
+    *,
+    importance: FloatArray | None = None,
+    lag_importance: FloatArray | None = None,
+    budget: float = 1.0,
+    pieces: Pieces | None = None,
 ) -> Gains:
-    """Decays and gains of increments, each with a guaranteed half-width.
+    """Decays and gains of increments, each with guaranteed half-widths.
 
     Parameters
     ----------
@@ -214,10 +89,14 @@ def bracketed_gains(
         Temperatures at the ends [K], straight between.
     times : ndarray, shape (m,)
         Relaxation times [s at T_ref].
-    importance : ndarray, shape (n, m)
-        What a unit error of each gain is worth.
-    budget : float
+    importance : ndarray, shape (n, m), optional
+        What a unit error of each gain is worth; nothing if left out, and no increment is cut but at knots.
+    lag_importance : ndarray, shape (n,), optional
+        What an error of one second of each lag is worth.
+    budget : float, optional
         Sum of weighted half-gaps to aim at. Pieces are cut until it is met, or `LARGEST_WORK` is.
+    pieces : Pieces, optional
+        Of an earlier call for the same increments, to cut on from.
 
     Returns
     -------
@@ -228,80 +107,125 @@ def bracketed_gains(
     ShiftRangeError
         If the law has no answer at a temperature.
     """
-    n, m = duration.size, times.size
-    pieces = _initial(T, law.knots)
-    clock, ordered = _clock(law, duration, T, pieces)
+    n, work = duration.size, times.size + CLOCK_WORK
+    weights = np.zeros((n, times.size)) if importance is None else importance
+    lag_weights = np.zeros(n) if lag_importance is None else lag_importance
+    pieces = first_pieces(T, law.knots) if pieces is None else pieces
+    clock = clock_of(law, duration, T, pieces)
+    within = False
     for _ in range(ROUNDS):
-        widths = _widths(clock, pieces.row, times, importance)
-        total = float(widths.sum())
-        if total <= budget or pieces.row.size * max(m, 1) > LARGEST_WORK:
+        widths = _widths(clock, pieces.row, times, weights, lag_weights)
+        within = float(widths.sum()) <= budget
+        if within or pieces.row.size * work > LARGEST_WORK:
             break
-        cut = _cut(pieces, widths, 0.5 * budget / pieces.row.size)
-        if cut.row.size * max(m, 1) > 2 * LARGEST_WORK:
+        cut = cut_pieces(pieces, widths, 0.5 * budget / pieces.row.size)
+        if cut.row.size * work > 2 * LARGEST_WORK:
             break
         pieces = cut
-        clock, still = _clock(law, duration, T, pieces)
-        ordered = ordered and still
-    return _collected(law, duration, T, times, pieces, clock, ordered)
+        clock = clock_of(law, duration, T, pieces)
+    return _collected(n, times, pieces, clock, within)
 
 
-def _summed(row: np.ndarray, values: FloatArray, n: int) -> FloatArray:
-    """Sum values of pieces over their increments; every increment has a piece."""
-    starts = np.searchsorted(row, np.arange(n))
-    return np.add.reduceat(values, starts, axis=0)
+def _mean_exp(x: FloatArray) -> FloatArray:
+    """(1 - exp(-x))/x, 1 at 0."""
+    positive = np.where(x > 0.0, x, 1.0)
+    return np.where(x > 0.0, -np.expm1(-positive) / positive, 1.0)
 
 
-def _collected(
-    law: ShiftLaw,
-    duration: FloatArray,
-    T: FloatArray,
-    times: FloatArray,
-    pieces: _Pieces,
-    clock: _Clock,
-    ordered: bool,
-) -> Gains:
-    n, m = duration.size, times.size
-    value, half = np.empty((n, m)), np.empty((n, m))
-    # By runs of whole increments, to bound memory.
-    bounds = np.searchsorted(pieces.row, np.arange(n + 1))
-    size = max(1, CHUNK // max(m, 1))
-    k = 0
-    while k < n:
-        stop = max(k + 1, int(np.searchsorted(bounds, bounds[k] + size, "right")) - 1)
-        stop = min(stop, n)
-        part = slice(int(bounds[k]), int(bounds[stop]))
-        chord, tangents = _bracket(clock, times, part)
-        rows = pieces.row[part] - k
-        # The chord errs twice as much as the tangents, the other way; the half-width still reaches both.
-        value[k:stop] = _summed(rows, (chord + 2.0 * tangents) / 3.0, stop - k)
-        half[k:stop] = _summed(rows, np.abs(chord - tangents) * (2.0 / 3.0), stop - k)
-        k = stop
-    dxi = _summed(pieces.row, clock.dxi, n)
-    lag_chord, lag_tangents = _lags(clock)
-    lag = _summed(pieces.row, (lag_chord + 2.0 * lag_tangents) / 3.0, n)
-    clock_error = _clock_error(law, T)
+def _ratio(seconds: FloatArray, times: FloatArray) -> FloatArray:
+    """``seconds/times``, shape (pieces, m)."""
     with np.errstate(over="ignore"):
-        r = np.minimum(dxi[:, np.newaxis] / times, 1e300)
-    decay = np.exp(-r)
-    bend = np.minimum(r, 1.0)[:, :] * clock_error[:, np.newaxis]
+        return np.minimum(seconds[:, np.newaxis] / times, LARGEST_R)
+
+
+def _bracket(clock: Clock, times: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Share of each piece in the gain of its increment, by the chord and by the two tangents, shape (pieces, m)."""
+    weight = clock.share[:, np.newaxis] * np.exp(-_ratio(clock.after, times))
+    chord = _mean_exp(_ratio(clock.dxi, times))
+    bend = clock.bend
+    x_first, x_last = _ratio(clock.first * bend, times), _ratio(clock.last * (1.0 - bend), times)
+    p = bend[:, np.newaxis]
+    tangents = (1.0 - p) * _mean_exp(x_last) + p * np.exp(-x_last) * _mean_exp(x_first)
+    is_straight = (clock.first == clock.last)[:, np.newaxis]
+    return weight * chord, weight * np.where(is_straight, chord, tangents)
+
+
+def _lags(clock: Clock) -> tuple[FloatArray, FloatArray]:
+    """Mean of xi_end - xi(s) over each piece alone, by the chord and by the tangents [s], shape (pieces,)."""
+    bend, chord = clock.bend, 0.5 * clock.dxi
+    late = clock.last * (1.0 - bend)
+    tangents = (1.0 - bend) * 0.5 * late + bend * (late + 0.5 * clock.first * bend)
+    return chord, np.where(clock.first == clock.last, chord, tangents)
+
+
+def _widths(
+    clock: Clock, row: np.ndarray, times: FloatArray, importance: FloatArray, lag_importance: FloatArray
+) -> FloatArray:
+    """Weighted half-gap of each piece, shape (pieces,)."""
+    chord, tangents = _lags(clock)
+    widths = clock.share * np.abs(chord - tangents) * lag_importance[row]
+    bent = np.flatnonzero(clock.first != clock.last)
+    size = max(1, CHUNK // max(times.size, 1))
+    for start in range(0, bent.size, size):
+        some = bent[start : start + size]
+        by_chord, by_tangents = _bracket(clock.taken(some), times)
+        widths[some] += np.einsum("ij,ij->i", np.abs(by_chord - by_tangents), importance[row[some]])
+    return widths
+
+
+def _averaged(chord: FloatArray, tangents: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Value and half-gap: the chord errs twice as much as the tangents, the other way; the half-gap reaches both."""
+    return (chord + 2.0 * tangents) / 3.0, np.abs(chord - tangents) * (2.0 / 3.0)
+
+
+def _gains_of(clock: Clock, times: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Share of each piece in the gain of its increment, its half-gap and its rounding, shape (pieces, m)."""
+    chord, tangents = _bracket(clock, times)
+    value, gap = _averaged(chord, tangents)
+    own, later = _ratio(clock.dxi_error, times), _ratio(clock.after_error, times)
+    relative = np.where(clock.dxi > 0.0, clock.dxi_error / np.where(clock.dxi > 0.0, clock.dxi, 1.0), 0.0)
+    moved = np.minimum(own, relative[:, np.newaxis]) + np.minimum(later, FORGOTTEN)
+    return value, gap, np.maximum(chord, tangents) * (moved + 8.0 * EPS)
+
+
+def _collected(n: int, times: FloatArray, pieces: Pieces, clock: Clock, within: bool) -> Gains:
+    gain, gap, rounding = np.empty((n, times.size)), np.empty((n, times.size)), np.empty((n, times.size))
+    bounds = np.searchsorted(pieces.row, np.arange(n + 1))
+    size = max(1, CHUNK // max(times.size, 1))
+    k = 0
+    while k < n:  # whole increments at a time, to bound memory
+        stop = min(n, max(k + 1, int(np.searchsorted(bounds, bounds[k] + size, "right")) - 1))
+        part = slice(int(bounds[k]), int(bounds[stop]))
+        sums = (sums_by_row(pieces.row[part] - k, v, stop - k) for v in _gains_of(clock.taken(part), times))
+        gain[k:stop], gap[k:stop], rounding[k:stop] = sums
+        k = stop
+    summing = EPS * np.diff(bounds)  # one rounding a piece at most
+    lag, lag_gap = _averaged(*_lags(clock))
+    with np.errstate(over="ignore"):
+        dxi, dxi_error, lag, lag_gap, lag_error = (
+            np.minimum(sums_by_row(pieces.row, values, n), LONGEST)
+            for values in (
+                clock.dxi,
+                clock.dxi_error,
+                clock.share * (lag + clock.after),
+                clock.share * lag_gap,
+                clock.share * (clock.dxi_error + clock.after_error),
+            )
+        )
+    dxi_error += summing * dxi
+    decay = np.exp(-_ratio(dxi, times))
     return Gains(
         dxi=dxi,
-        clock_error=clock_error,
+        dxi_rounding=dxi_error,
         decay=decay,
-        decay_error=decay * (2.0 * EPS + np.minimum(r, 1e3) * clock_error[:, np.newaxis]),
-        gain=value,
-        gain_error=half + value * (8.0 * EPS + 2.0 * bend + 2.0 * clock_error[:, np.newaxis]),
+        decay_rounding=decay * (2.0 * EPS + np.minimum(_ratio(dxi_error, times), FORGOTTEN)),
+        gain=gain,
+        gain_gap=gap,
+        gain_rounding=rounding + summing[:, np.newaxis] * gain,
         lag=lag,
-        lag_error=_summed(pieces.row, np.abs(lag_chord - lag_tangents) * (2.0 / 3.0), n)
-        + lag * (clock_error + 8.0 * EPS),
-        pieces=pieces.row.size,
-        ordered=ordered,
+        lag_gap=lag_gap,
+        lag_rounding=lag_error + (8.0 * EPS + summing) * lag,
+        pieces=pieces,
+        within_budget=within,
+        ordered=clock.ordered,
     )
-
-
-def _clock_error(law: ShiftLaw, T: FloatArray) -> FloatArray:
-    """Relative rounding of the reduced time of increments: of its formula, of ln a_T, and of the temperatures in it."""
-    ln_a = law.ln_shift(T)
-    step = np.abs(np.diff(T))
-    slope = np.abs(np.diff(ln_a)) / np.where(step > 0.0, step, 1.0)
-    return CLOCK_ROUNDING + 4.0 * EPS * (np.abs(ln_a[1:]) + np.abs(ln_a[:-1]) + slope * (T[1:] + T[:-1]))

@@ -8,7 +8,7 @@ estimated by refinement, and the result says so.
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -16,30 +16,22 @@ from drivers.hereditary import Gains, bracketed_gains
 from drivers.history import History
 from drivers.path import Path, Segment, segment_blocks
 from drivers.refinement import refined_solution
+from drivers.superposition import EPS, Key, Stretch, laid_out, superposed
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
-from matlib.mode_kernels import DRIVEN, MECHANICAL, RESPONSES, THERMAL, ExpKernel, ModeResponse, mode_response
-from matlib.routine import Block
+from matlib.mode_kernels import DRIVEN, MECHANICAL, ONE, RESPONSES, THERMAL, ExpKernel, ModeResponse, mode_response
 from matlib.shift.base import ShiftLaw
 from matlib.tensors import mandel_from_strain, mandel_from_stress, strain_from_mandel, stress_from_mandel
 
 __all__ = ["DEFAULT_ACCURACY", "Reference", "has_closed_response", "solve"]
 
-EPS = float(np.finfo(np.float64).eps)
-
-DEFAULT_ACCURACY = 1e-7
-"""Guaranteed half-width to aim at, as a fraction of the peak; the value itself is far closer, since chord and tangents err to
-opposite sides and are averaged so that their leading errors cancel."""
+DEFAULT_ACCURACY = 1e-9
+"""Guaranteed half-width to aim at, as a fraction of the peak."""
 
 FIRST_BUDGET, LAST_BUDGET = 300.0, 1e-6
 """Budgets for the gaps of one segment, in units of the accuracy: most of an early gap is forgotten by the end, so the first try is
 generous; the last one bounds the time."""
-
-LARGEST_RUN = 100_000  # pieces
-
-KERNEL_ROUNDING = 1e-13
-"""Relative accuracy of the poles and residues of a mode's kernel; measured at 4e-15 against arbitrary precision."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -53,7 +45,7 @@ class Reference:
     strain_bound : ndarray, shape (n,)
         Half-width on any strain component of each row [-].
     relative_bound : float
-        Largest half-width as a fraction of the peak, of stress or of strain, whichever is the response.
+        Largest half-width as a fraction of the peak, of stress or of strain, whichever is larger.
     estimated : bool
         Whether the bound is an estimate by refinement rather than guaranteed.
     pieces : int
@@ -67,61 +59,72 @@ class Reference:
     pieces: int
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Stretch:
-    """One segment as it runs: its increments, and the driven value and thermal strain at their ends."""
-
-    key: tuple[int, float]
-    label: str
-    time: FloatArray
-    duration: FloatArray
-    T: FloatArray
-    inputs: dict[str, FloatArray]
-
-
 def has_closed_response(path: Path) -> bool:
-    """Whether the bound on this path can be guaranteed: one kind of control throughout, in a named mode or all by strain."""
-    masks = {tuple(segment.stress_controlled.tolist()) for segment in path.segments}
-    return len(masks) == 1 and (path.mode.name in RESPONSES or not any(next(iter(masks))))
+    """Whether the bound on this path can be guaranteed.
+
+    It can where one kind of control holds throughout: in a named mode, its driven components alike and nothing asked of the
+    others, or with all components following strains.
+    """
+    if not path.mode.driven:
+        return not any(segment.stress_controlled.any() for segment in path.segments)
+    if path.mode.name not in RESPONSES:
+        return False
+    driven, free = list(path.mode.driven), list(path.mode.free)
+    rest = [c for c in range(6) if c not in driven]
+    by_stress = path.segments[0].stress_controlled[driven[0]]
+    mask = np.zeros(6, dtype=np.bool_)
+    mask[free] = True
+    mask[driven] = by_stress
+    return all(
+        np.array_equal(s.stress_controlled, mask)
+        and np.all(s.held[driven] == s.held[driven[0]])
+        and np.all(s.targets[:, driven] == s.targets[:, driven[:1]])
+        and not np.any(s.targets[:, rest] * ~s.held[rest])
+        for s in path.segments
+    )
 
 
 def _response(material: Material, path: Path) -> ModeResponse:
     """Kernels of the path's mode, in named components."""
-    if path.mode.name in RESPONSES:
+    if path.mode.driven:
         driven = bool(path.segments[0].stress_controlled[path.mode.driven[0]])
         return mode_response(material.shear, material.bulk, path.mode.name, stress_driven=driven)
     shear, bulk = ExpKernel.of(material.shear), ExpKernel.of(material.bulk)
     volume = ("volume", bulk - (2.0 / 3.0) * shear)
     thermal = (THERMAL, -3.0 * bulk)
-    identity = ExpKernel(constant=1.0)
     return ModeResponse(
-        strain={c: ((f"strain {c}", identity),) for c in range(6)},
+        strain={c: ((f"strain {c}", ONE),) for c in range(6)},
         stress={c: ((f"strain {c}", 2.0 * shear), volume, thermal) for c in range(3)}
         | {c: ((f"strain {c}", shear),) for c in range(3, 6)},
     )
 
 
-def _stretches(material: Material, path: Path) -> Iterator[_Stretch]:
+def _stretches(material: Material, path: Path) -> Iterator[Stretch]:
     """Every segment in running order, with its inputs at all increment ends, the start included."""
     values, time, T = np.zeros(6), 0.0, path.start_temperature
+    largest: dict[str, float] = {}
     for index, label, segment in path.unrolled():
         start = T
         blocks = list(segment_blocks(segment, time, T, values))
         temperature = np.concatenate([blocks[0].temperature[:1], *(b.temperature[1:] for b in blocks)])
         targets = np.concatenate([values[np.newaxis], *(b.targets for b in blocks)])
-        yield _Stretch(
+        inputs = _inputs(path, segment, targets, material.expansion * (temperature - path.start_temperature))
+        sizes = _sizes(inputs, np.where(inputs[THERMAL] != 0.0, abs(material.expansion) * temperature, 0.0))
+        roundings = {}
+        for name, size in sizes.items():
+            reached = np.maximum.accumulate(np.maximum(size, largest.get(name, 0.0)))
+            largest[name] = float(reached[-1])
+            roundings[name] = 4.0 * EPS * reached
+        yield Stretch(
             key=(index, start),
             label=label,
-            time=np.concatenate([b.time + b.duration for b in blocks]),
+            time=np.concatenate([b.time_end for b in blocks]),
             duration=np.concatenate([b.duration for b in blocks]),
             T=temperature,
-            inputs=_inputs(path, segment, targets, material.expansion * (temperature - path.start_temperature)),
+            inputs=inputs,
+            roundings=roundings,
         )
-        values, time, T = _end(blocks), time + segment.duration, float(temperature[-1])
-
-
-def _end(blocks: list[Block]) -> FloatArray:
-    return blocks[-1].targets[-1]
+        values, time, T = blocks[-1].targets[-1], time + segment.duration, float(temperature[-1])
 
 
 def _inputs(path: Path, segment: Segment, targets: FloatArray, thermal: FloatArray) -> dict[str, FloatArray]:
@@ -132,6 +135,17 @@ def _inputs(path: Path, segment: Segment, targets: FloatArray, thermal: FloatArr
         return {DRIVEN: driven, THERMAL: thermal, MECHANICAL: driven - thermal}
     strains = {f"strain {c}": named[:, c] for c in range(6)}
     return {**strains, "volume": named[:, :3].sum(axis=1), THERMAL: thermal}
+
+
+def _sizes(inputs: dict[str, FloatArray], thermal: FloatArray) -> dict[str, FloatArray]:
+    """Magnitudes that the roundings of inputs are parts of; `thermal` is what absolute temperature stands for."""
+    sizes = {name: np.abs(values) for name, values in inputs.items()}
+    sizes[THERMAL] = thermal
+    if MECHANICAL in sizes:
+        sizes[MECHANICAL] = sizes[DRIVEN] + thermal
+    if "volume" in sizes:
+        sizes["volume"] = sum((sizes[f"strain {c}"] for c in range(3)), np.zeros_like(thermal))
+    return sizes
 
 
 def solve(material: Material, path: Path, *, accuracy: float = DEFAULT_ACCURACY) -> Reference:
@@ -153,11 +167,14 @@ def solve(material: Material, path: Path, *, accuracy: float = DEFAULT_ACCURACY)
     ------
     ShiftRangeError
         If the path leads the shift law where it has no answer.
+    ParameterError
+        If `accuracy` is out of its range, or the response grows beyond all numbers.
 
     Notes
     -----
     The half-width covers the gap between chord and tangents, and rounding: of the shift factor and the temperatures, magnified by
-    the slope of the law, of each sum, and of the kernels.
+    the slope of the law, of each sum, and of the kernels. Where rounding alone takes more than half of `accuracy`, twice what it
+    takes is aimed at.
     """
     if not 1e-11 <= accuracy <= 1e-2:
         raise ParameterError("accuracy", "from 1e-11 to 1e-2", accuracy)
@@ -166,198 +183,114 @@ def solve(material: Material, path: Path, *, accuracy: float = DEFAULT_ACCURACY)
     response = _response(material, path)
     stretches = list(_stretches(material, path))
     kernels = [kernel for terms in (*response.strain.values(), *response.stress.values()) for _, kernel in terms]
-    times = np.unique(np.concatenate([kernel.times for kernel in kernels] or [np.empty(0)]))
-    ramps = _Ramps.of(material, response, stretches, times)
-    budget = FIRST_BUDGET * accuracy
+    times = np.unique(np.concatenate([kernel.times for kernel in kernels]))
+    ramps = _Ramps.of(material.shift, stretches, times)
+    floor = _assembled(path, response, stretches, times, ramps, gaps=False)
+    ramps.weigh(response, stretches, floor.history)
+    aim = max(accuracy, 2.0 * floor.relative_bound)
+    budget = FIRST_BUDGET * aim
     while True:
-        solution = _assembled(path, response, stretches, times, ramps.gains(budget))
-        if solution.relative_bound <= accuracy or budget <= accuracy * LAST_BUDGET or ramps.exhausted:
+        ramps.cut(budget)
+        solution = _assembled(path, response, stretches, times, ramps)
+        if solution.relative_bound <= aim or budget <= aim * LAST_BUDGET or ramps.exhausted:
             return solution
-        budget *= min(0.3, max(0.003, 0.5 * accuracy / solution.relative_bound))
-
-
-def _weights(response: ModeResponse, times: FloatArray, names: list[str]) -> dict[str, FloatArray]:
-    """How much each term of each input weighs in the largest component, by quantity: shape (inputs, m)."""
-    weights = {}
-    for quantity, components in (("strain", response.strain), ("stress", response.stress)):
-        largest = np.zeros((len(names), times.size))
-        for terms in components.values():
-            one = np.zeros_like(largest)
-            for name, kernel in terms:
-                one[names.index(name)] += _on(times, np.abs(kernel.amplitudes), kernel.times)
-            largest = np.maximum(largest, one)
-        weights[quantity] = largest
-    return weights
-
-
-def _on(times: FloatArray, amplitudes: FloatArray, own: FloatArray) -> FloatArray:
-    """Amplitudes laid out on the common times."""
-    laid = np.zeros(times.size)
-    np.add.at(laid, np.searchsorted(times, own), amplitudes)
-    return laid
+        budget *= min(0.3, max(0.003, 0.5 * aim / solution.relative_bound))
 
 
 @dataclass(slots=True, kw_only=True, eq=False)
 class _Ramps:
-    """The distinct segments of a run, and what their gains are worth."""
+    """The distinct segments of a run, their gains, and what these are worth."""
 
     law: ShiftLaw
     times: FloatArray
-    first: dict[tuple[int, float], _Stretch]
-    importance: dict[tuple[int, float], FloatArray]
-    made: dict[tuple[int, float], Gains]
-    exhausted: bool = False
+    first: dict[Key, Stretch]
+    made: dict[Key, Gains]
+    importance: dict[Key, tuple[FloatArray, FloatArray]] = field(default_factory=dict)
 
     @classmethod
-    def of(cls, material: Material, response: ModeResponse, stretches: list[_Stretch], times: FloatArray) -> _Ramps:
-        """Weigh every gain by a coarse pass, which gives the size of the response."""
+    def of(cls, law: ShiftLaw, stretches: list[Stretch], times: FloatArray) -> _Ramps:
+        """Gains without any cutting."""
+        first: dict[Key, Stretch] = {}
+        for stretch in stretches:
+            first.setdefault(stretch.key, stretch)
+        made = {key: bracketed_gains(law, s.duration, s.T, times) for key, s in first.items()}
+        return cls(law=law, times=times, first=first, made=made)
+
+    def weigh(self, response: ModeResponse, stretches: list[Stretch], coarse: History) -> None:
+        """What a unit error of each gain and lag is worth, as a fraction of the peaks of a coarse solution."""
         names = list(stretches[0].inputs)
-        weights = _weights(response, times, names)
-        changes: dict[tuple[int, float], FloatArray] = {}
-        first: dict[tuple[int, float], _Stretch] = {}
+        weights, lag_weights = np.zeros((len(names), self.times.size)), np.zeros(len(names))
+        for components, values in (
+            (response.strain, coarse.strain_components),
+            (response.stress, coarse.stress_components),
+        ):
+            peak = float(np.abs(values).max())
+            for terms in components.values() if peak > 0.0 else ():
+                for i, kernel in ((names.index(name), kernel) for name, kernel in terms):
+                    weights[i] = np.maximum(weights[i], np.abs(laid_out(self.times, kernel)) / peak)
+                    lag_weights[i] = max(lag_weights[i], abs(kernel.slope) / peak)
+        changes: dict[Key, FloatArray] = {}
         for stretch in stretches:
             steps = np.stack([np.abs(np.diff(stretch.inputs[name])) for name in names], axis=1)
             changes[stretch.key] = np.maximum(changes.get(stretch.key, 0.0), steps)
-            first.setdefault(stretch.key, stretch)
-        nothing = {key: np.zeros((s.duration.size, times.size)) for key, s in first.items()}
-        ramps = cls(law=material.shift, times=times, first=first, importance=nothing, made={})
-        for key, s in first.items():
-            ramps.made[key] = bracketed_gains(material.shift, s.duration, s.T, times, nothing[key], 1.0)
-        for quantity, peak in _peaks(response, stretches, times, ramps.made).items():
-            if peak > 0.0:
-                for key, change in changes.items():
-                    ramps.importance[key] = np.maximum(ramps.importance[key], change @ weights[quantity] / peak)
-        return ramps
+        self.importance = {key: (change @ weights, change @ lag_weights) for key, change in changes.items()}
 
-    def gains(self, budget: float) -> dict[tuple[int, float], Gains]:
-        """Gains of every distinct segment, each to the budget where its temperature changes."""
-        before = sum(gains.pieces for gains in self.made.values())
+    def cut(self, budget: float) -> None:
+        """Cut every distinct segment to the budget where its temperature changes."""
         for key, s in self.first.items():
             if np.any(s.T != s.T[0]):
-                self.made[key] = bracketed_gains(self.law, s.duration, s.T, self.times, self.importance[key], budget)
-        self.exhausted = before > LARGEST_RUN and before == sum(gains.pieces for gains in self.made.values())
-        return self.made
+                own, lag = self.importance[key]
+                self.made[key] = bracketed_gains(
+                    self.law, s.duration, s.T, self.times,
+                    importance=own, lag_importance=lag, budget=budget, pieces=self.made[key].pieces,
+                )  # fmt: skip
 
-
-def _peaks(
-    response: ModeResponse, stretches: list[_Stretch], times: FloatArray, gains: dict[tuple[int, float], Gains]
-) -> dict[str, float]:
-    peaks = {"strain": 0.0, "stress": 0.0}
-    for rows in _march(response, stretches, times, gains):
-        peaks["strain"] = max(peaks["strain"], float(np.abs(rows.strain).max()))
-        peaks["stress"] = max(peaks["stress"], float(np.abs(rows.stress).max()))
-    return peaks
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class _Rows:
-    """Components at the increment ends of one stretch, in their names' order, with half-widths."""
-
-    stretch: _Stretch
-    xi: FloatArray
-    strain: FloatArray
-    stress: FloatArray
-    strain_error: FloatArray
-    stress_error: FloatArray
-
-
-def _march(
-    response: ModeResponse, stretches: list[_Stretch], times: FloatArray, gains: dict[tuple[int, float], Gains]
-) -> Iterator[_Rows]:
-    """Carry the integrals of all terms and inputs along the path."""
-    names = list(stretches[0].inputs)
-    m, c = times.size, len(names)
-    v, w = np.zeros((m, c)), np.zeros((m, c))  # integrals and their half-widths
-    q, q_error = np.zeros(c), np.zeros(c)
-    xi = 0.0
-    for stretch in stretches:
-        g = gains[stretch.key]
-        u = np.stack([stretch.inputs[name] for name in names], axis=1)
-        du = np.diff(u, axis=0)
-        n = du.shape[0]
-        V, W = np.empty((n, m, c)), np.empty((n, m, c))
-        Q, Q_error = np.empty((n, c)), np.empty((n, c))
-        for k in range(n):
-            step = np.abs(du[k])
-            w = g.decay[k, :, None] * w + g.decay_error[k, :, None] * np.abs(v) + g.gain_error[k, :, None] * step
-            v = g.decay[k, :, None] * v + g.gain[k, :, None] * du[k]
-            w += 2.0 * EPS * np.abs(v)
-            q_error = q_error + g.dxi[k] * g.clock_error[k] * np.abs(u[k]) + g.lag_error[k] * step
-            q = q + g.dxi[k] * u[k] + g.lag[k] * du[k]
-            q_error += 2.0 * EPS * np.abs(q)
-            V[k], W[k], Q[k], Q_error[k] = v, w, q, q_error
-        ends = xi + np.cumsum(g.dxi)
-        strain, strain_error = _components(response.strain, names, times, u[1:], V, W, Q, Q_error)
-        stress, stress_error = _components(response.stress, names, times, u[1:], V, W, Q, Q_error)
-        yield _Rows(
-            stretch=stretch, xi=ends, strain=strain, stress=stress, strain_error=strain_error, stress_error=stress_error
-        )
-        xi = float(ends[-1])
-
-
-def _components(
-    components: dict[int, tuple[tuple[str, ExpKernel], ...]],
-    names: list[str],
-    times: FloatArray,
-    u: FloatArray,
-    V: FloatArray,
-    W: FloatArray,
-    Q: FloatArray,
-    Q_error: FloatArray,
-) -> tuple[FloatArray, FloatArray]:
-    """Six components and their half-widths at n increment ends, shapes (n, 6)."""
-    values, errors = np.zeros((u.shape[0], 6)), np.zeros((u.shape[0], 6))
-    for component, terms in components.items():
-        for name, kernel in terms:
-            i = names.index(name)
-            a = _on(times, kernel.amplitudes, kernel.times)
-            part = V[:, :, i] @ a
-            values[:, component] += kernel.constant * u[:, i] + part
-            size = np.abs(kernel.constant * u[:, i]) + np.abs(V[:, :, i]) @ np.abs(a)
-            errors[:, component] += W[:, :, i] @ np.abs(a)
-            if kernel.slope != 0.0:
-                values[:, component] += kernel.slope * Q[:, i]
-                errors[:, component] += abs(kernel.slope) * Q_error[:, i]
-                size += np.abs(kernel.slope * Q[:, i])
-            exact = kernel.times.size == 0 and kernel.slope == 0.0
-            errors[:, component] += (4.0 * EPS if exact else KERNEL_ROUNDING) * size
-    return values, errors
+    @property
+    def exhausted(self) -> bool:
+        """Whether a segment could not be cut as far as the budget asked."""
+        return any(not gains.within_budget for key, gains in self.made.items() if np.any(np.diff(self.first[key].T)))
 
 
 def _assembled(
     path: Path,
     response: ModeResponse,
-    stretches: list[_Stretch],
+    stretches: list[Stretch],
     times: FloatArray,
-    gains: dict[tuple[int, float], Gains],
+    ramps: _Ramps,
+    *,
+    gaps: bool = True,
 ) -> Reference:
-    rows = list(_march(response, stretches, times, gains))
-    labels = ["start"]
-    for part in rows:
-        labels += [part.stretch.label] * part.xi.size
+    with np.errstate(over="ignore", invalid="ignore"):
+        rows = list(superposed(response, stretches, times, ramps.made, gaps=gaps))
 
     def column(name: str) -> FloatArray:
         parts = [getattr(part, name) for part in rows]
         return np.concatenate([np.zeros((1, *parts[0].shape[1:])), *parts])
 
     strain, stress = column("strain"), column("stress")
+    if not (np.isfinite(strain).all() and np.isfinite(stress).all()):
+        raise ParameterError("path", "such that strain and stress stay finite", "a response without bound")
     strain_bound, stress_bound = column("strain_error").max(axis=1), column("stress_error").max(axis=1)
+    sizes = [stretch.duration.size for stretch in stretches]
+    is_end = np.zeros(1 + sum(sizes), dtype=np.bool_)
+    is_end[np.concatenate([[0], np.cumsum(sizes)])] = True
     history = History(
-        segment=tuple(labels),
-        time=np.concatenate([[0.0], *(part.stretch.time for part in rows)]),
-        temperature=np.concatenate([[path.start_temperature], *(part.stretch.T[1:] for part in rows)]),
+        segment=("start", *(stretch.label for stretch in stretches for _ in range(stretch.duration.size))),
+        time=np.concatenate([[0.0], *(stretch.time for stretch in stretches)]),
+        temperature=np.concatenate([[path.start_temperature], *(stretch.T[1:] for stretch in stretches)]),
         reduced_time=column("xi"),
         strain=mandel_from_strain(strain),
         stress=mandel_from_stress(stress),
         peak_stress=float(np.abs(stress).max()),
         bound=stress_bound,
+        ends=is_end,
     )
     return Reference(
         history=history,
         strain_bound=strain_bound,
         relative_bound=_relative(stress_bound, stress, strain_bound, strain),
-        estimated=not all(g.ordered for g in gains.values()),
-        pieces=sum(g.pieces for g in gains.values()),
+        estimated=not all(gains.ordered for gains in ramps.made.values()),
+        pieces=sum(gains.pieces.row.size for gains in ramps.made.values()),
     )
 
 

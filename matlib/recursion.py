@@ -13,6 +13,7 @@ import numpy as np
 
 from matlib.arrays import FloatArray
 from matlib.errors import UnknownNameError
+from matlib.packing import Form
 
 __all__ = ["RECURSIONS", "Recursion", "find_recursion"]
 
@@ -35,6 +36,8 @@ class Recursion:
         Whether that is what the integral itself does.
     reference : str
         Source of the formula.
+    form : Form, optional
+        Compiled functions that give the same; if left out, `decay` and `gain` are evaluated for whole blocks.
 
     Notes
     -----
@@ -48,6 +51,7 @@ class Recursion:
     large_r: str
     right_limit: bool
     reference: str
+    form: Form = Form()
 
 
 def _exp(r: FloatArray) -> FloatArray:
@@ -91,6 +95,7 @@ RECURSIONS: dict[str, Recursion] = {
             right_limit=True,
             reference="R. L. Taylor, K. S. Pister, G. L. Goudreau, Int. J. Numer. Meth. Eng. 2 (1970) 45-59"
             " (from memory)",
+            form=Form.named("exponential"),
         ),
         Recursion(
             name="midpoint",
@@ -100,6 +105,7 @@ RECURSIONS: dict[str, Recursion] = {
             large_r="the gain underflows: the viscous stress of the increment is lost",
             right_limit=False,
             reference="J. C. Simo, T. J. R. Hughes, Computational Inelasticity (1998), ch. 10 (from memory)",
+            form=Form.named("midpoint"),
         ),
         Recursion(
             name="trapezoidal",
@@ -109,6 +115,7 @@ RECURSIONS: dict[str, Recursion] = {
             large_r="the decay tends to -1: the stress rings from increment to increment",
             right_limit=False,
             reference="trapezoidal rule on the rate equation of one term (textbook)",
+            form=Form.named("rational", a=0.5, b=0.5),
         ),
         Recursion(
             name="backward-euler",
@@ -118,6 +125,7 @@ RECURSIONS: dict[str, Recursion] = {
             large_r="the gain falls as 1/r: right limit, but first order",
             right_limit=True,
             reference="backward Euler rule on the rate equation of one term (textbook)",
+            form=Form.named("rational", a=0.0, b=1.0),
         ),
     )
 }

@@ -7,9 +7,10 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from matlib.arrays import FloatArray, frozen
+from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
+from matlib.packing import GIVEN, State, pack, pack_weights
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS, Recursion
 from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Update
@@ -137,31 +138,26 @@ class LinearViscoelastic(BlockRoutine):
         _require_shape("targets", block.targets, (n, 6))
         _require_shape("temperature", T, (n + 1,))
         dxi = self.reduced_time(block.duration, T[:-1], T[1:])
-        shear_decay, shear_gain = self._weights(shear, dxi)
-        bulk_decay, bulk_gain = self._weights(bulk, dxi)
-        strain_end, theta, p = strain.copy(), memory[:1].copy(), memory[1 : 1 + bulk.times.size].copy()
-        h = memory[1 + bulk.times.size :].reshape(6, -1).copy()
-        strain_out, stress_out = np.empty_like(block.targets), np.empty_like(block.targets)
-        run_block(
-            frozen(block.targets),
-            block.stress_controlled.copy(),
-            frozen(3.0 * self.material.expansion * np.diff(T)),
-            frozen(shear_decay),
-            frozen(shear_gain),
-            frozen(bulk_decay),
-            frozen(bulk_gain),
-            shear.moduli,
-            bulk.moduli,
-            shear.equilibrium,
-            bulk.equilibrium,
-            strain_end,
-            theta,
-            h,
-            p,
-            strain_out,
-            stress_out,
-        )
-        return BlockResponse(strain_out, stress_out, np.concatenate([theta, p, h.ravel()]))
+        shear_terms, bulk_terms = pack(shear, 2.0), pack(bulk)
+        if self.recursion.form.kind == GIVEN:
+            shear_terms = pack_weights(shear_terms, *self._weights(shear, dxi))
+            bulk_terms = pack_weights(bulk_terms, *self._weights(bulk, dxi))
+        state = State.unpacked(strain, memory, shear.times.size, bulk.times.size)
+        strain_out, stress_out = np.array(block.targets), np.empty((n, 6))
+        with np.errstate(over="ignore", under="ignore"):
+            run_block(
+                self.recursion.form,
+                np.array(dxi),
+                np.array(block.targets),
+                np.array(block.stress_controlled),
+                3.0 * self.material.expansion * np.diff(T),
+                shear_terms,
+                bulk_terms,
+                state,
+                strain_out,
+                stress_out,
+            )
+        return BlockResponse(strain_out, stress_out, state.memory(shear.times.size, bulk.times.size))
 
 
 def _require_shape(name: str, array: NDArray[np.generic], shape: tuple[int, ...]) -> None:

@@ -223,4 +223,6 @@ def _offset(card: Card, B: float, T_inf: float, because: str) -> Proposal:
         law="vft", T_ref=table.T_ref, T_inf=float(f"{unit.from_si(T_inf):.12g}"), B=unit.difference_from_si(B)
     )
     fits = f"law vft with T_inf = {_number(law.T_inf)}, B = {_number(law.B or 0.0)}"
-    return Proposal(card=dataclasses.replace(card, law_table=law), key="shift.law", found="arrhenius", fits=fits, because=because)
+    return Proposal(
+        card=dataclasses.replace(card, law_table=law), key="shift.law", found="arrhenius", fits=fits, because=because
+    )

@@ -1,0 +1,129 @@
+r"""What the compiled kernels take: series in tiles of terms, the state of a point, the form of a recursion."""
+
+from __future__ import annotations
+
+from typing import Literal, NamedTuple
+
+import numpy as np
+
+from matlib.arrays import FloatArray
+from matlib.prony import PronySeries
+
+__all__ = ["EXPONENTIAL", "GIVEN", "MIDPOINT", "RATIONAL", "TILE", "Form", "State", "Terms", "pack", "pack_weights"]
+
+TILE = 32
+"""Terms of one tile. Rows of a tile stand at fixed distances, which lets the compiler make vector instructions of loops."""
+
+GIVEN, EXPONENTIAL, MIDPOINT, RATIONAL = range(4)
+Kind = Literal["exponential", "midpoint", "rational"]
+_KINDS = {"exponential": EXPONENTIAL, "midpoint": MIDPOINT, "rational": RATIONAL}
+
+
+class Form(NamedTuple):
+    """Which compiled functions are the decay and the gain of a recursion.
+
+    Parameters
+    ----------
+    kind : int
+        `EXPONENTIAL`; `MIDPOINT`; `RATIONAL`, :math:`(1 - a r)/(1 + b r)` and :math:`1/(1 + b r)`; or `GIVEN`, weights that
+        are handed over.
+    a, b : float
+    """
+
+    kind: int = GIVEN
+    a: float = 0.0
+    b: float = 0.0
+
+    @classmethod
+    def named(cls, kind: Kind, a: float = 0.0, b: float = 0.0) -> Form:
+        """The form of that name."""
+        return cls(_KINDS[kind], a, b)
+
+
+class Terms(NamedTuple):
+    r"""A series as the kernels take it.
+
+    Parameters
+    ----------
+    equilibrium : float
+    packed : ndarray, shape (tiles, 3 * TILE)
+        :math:`1/\tau_i`, the modulus, and :math:`\tau_i` times it, each `TILE` long; zeros where there is no term.
+    count : int
+        Terms, rounded up to a multiple of four; those that are not there relax nothing.
+    given : ndarray, shape (n, tiles, 2 * TILE)
+        Decay, and modulus times gain, of each increment where the form is `GIVEN`; else empty.
+    """
+
+    equilibrium: float
+    packed: FloatArray
+    count: int
+    given: FloatArray
+
+
+class State(NamedTuple):
+    """What a point remembers, changed in place.
+
+    Parameters
+    ----------
+    strain : ndarray, shape (6,)
+    theta : ndarray, shape (1,)
+        Mechanical volume strain.
+    h : ndarray, shape (tiles, 6 * TILE)
+        Relaxing deviatoric stresses, components in turn.
+    p : ndarray, shape (tiles, TILE)
+        Relaxing mean stresses.
+    """
+
+    strain: FloatArray
+    theta: FloatArray
+    h: FloatArray
+    p: FloatArray
+
+    @classmethod
+    def unpacked(cls, strain: FloatArray, memory: FloatArray, shear_terms: int, bulk_terms: int) -> State:
+        """From a strain and the memory of a routine, both copied."""
+        p, h = memory[1 : 1 + bulk_terms], memory[1 + bulk_terms :].reshape(6, shear_terms)
+        return cls(strain.copy(), memory[:1].copy(), h=_tiled(h).reshape(-1, 6 * TILE), p=_tiled(p))
+
+    def memory(self, shear_terms: int, bulk_terms: int) -> FloatArray:
+        """The memory of a routine."""
+        h = self.h.reshape(-1, 6, TILE).transpose(1, 0, 2).reshape(6, -1)[:, :shear_terms]
+        return np.concatenate([self.theta, self.p.ravel()[:bulk_terms], h.ravel()])
+
+
+def _tiled(rows: FloatArray) -> FloatArray:
+    """Rows of terms, shape (..., terms), as shape (tiles, ..., TILE), filled with zeros."""
+    terms = rows.shape[-1]
+    tiles = max(1, -(-terms // TILE))
+    filled = np.zeros((*rows.shape[:-1], tiles * TILE))
+    filled[..., :terms] = rows
+    return np.ascontiguousarray(np.moveaxis(filled.reshape(*rows.shape[:-1], tiles, TILE), -2, 0))
+
+
+def _count(terms: int) -> int:
+    return -(-terms // 4) * 4
+
+
+def pack(series: PronySeries, factor: float = 1.0) -> Terms:
+    """A series for the kernels, its moduli times `factor`.
+
+    Examples
+    --------
+    >>> terms = pack(PronySeries(equilibrium=1.0, moduli=[2.0], times=[4.0]), factor=2.0)
+    >>> terms.equilibrium, terms.count, terms.packed[0, [0, TILE, 2 * TILE]].tolist()
+    (2.0, 4, [0.25, 4.0, 16.0])
+    """
+    with np.errstate(over="ignore", under="ignore"):
+        rates = np.minimum(1.0 / series.times, np.finfo(np.float64).max)
+    moduli = factor * series.moduli
+    packed = _tiled(np.stack([rates, moduli, moduli * series.times])).reshape(-1, 3 * TILE)
+    nothing = np.empty((0, packed.shape[0], 2 * TILE))
+    return Terms(factor * series.equilibrium, packed, _count(series.times.size), nothing)
+
+
+def pack_weights(terms: Terms, decay: FloatArray, gain: FloatArray) -> Terms:
+    """The same terms with decay and gain of each increment, both of shape (n, terms), handed over."""
+    moduli = terms.packed[:, TILE : 2 * TILE].ravel()[: decay.shape[1]]
+    tiled = _tiled(np.stack([decay, gain * moduli], axis=1))  # (tiles, n, 2, TILE)
+    given = np.ascontiguousarray(np.moveaxis(tiled, 0, 1)).reshape(decay.shape[0], -1, 2 * TILE)
+    return terms._replace(given=given)
