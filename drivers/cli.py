@@ -215,10 +215,10 @@ def compare(
 
     Example: cardproof compare cardproof-demo/laboratory.card.toml cardproof-demo/slip.card.toml
     """
-    from drivers.commands.compare import run
+    from drivers.commands import either
 
     raise typer.Exit(
-        run(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json, report=report)
+        either.compare(card_a, card_b, paths=path or [], tolerance=tolerance, plot=plot, json_file=json, report=report)
     )
 
 
@@ -303,10 +303,10 @@ def verify(
 
     Example: cardproof verify cardproof-demo/slip.card.toml cardproof-demo/laboratory.baseline.json
     """
-    from drivers.commands.verify import run
+    from drivers.commands import either
 
     raise typer.Exit(
-        run(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json, report=report)
+        either.verify(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json, report=report)
     )
 
 

@@ -40,6 +40,10 @@ class Form(NamedTuple):
         return cls(_KINDS[kind], a, b)
 
 
+AS_GIVEN = Form()
+"""The form of a recursion that has no compiled functions of its own."""
+
+
 class Terms(NamedTuple):
     r"""A series as the kernels take it.
 
@@ -48,7 +52,7 @@ class Terms(NamedTuple):
     equilibrium : float
     packed : ndarray, shape (tiles, 3 * TILE)
         :math:`1/\tau_i`, the modulus, and :math:`\tau_i` times it, each `TILE` long; zeros where there is no term.
-    count : int
+    width : int
         Terms, rounded up to a multiple of four; those that are not there relax nothing.
     given : ndarray, shape (n, tiles, 2 * TILE)
         Decay, and modulus times gain, of each increment where the form is `GIVEN`; else empty.
@@ -56,7 +60,7 @@ class Terms(NamedTuple):
 
     equilibrium: float
     packed: FloatArray
-    count: int
+    width: int
     given: FloatArray
 
 
@@ -110,7 +114,7 @@ def pack(series: PronySeries, factor: float = 1.0) -> Terms:
     Examples
     --------
     >>> terms = pack(PronySeries(equilibrium=1.0, moduli=[2.0], times=[4.0]), factor=2.0)
-    >>> terms.equilibrium, terms.count, terms.packed[0, [0, TILE, 2 * TILE]].tolist()
+    >>> terms.equilibrium, terms.width, terms.packed[0, [0, TILE, 2 * TILE]].tolist()
     (2.0, 4, [0.25, 4.0, 16.0])
     """
     with np.errstate(over="ignore", under="ignore"):

@@ -13,7 +13,7 @@ import numpy as np
 
 from matlib.arrays import FloatArray
 from matlib.errors import UnknownNameError
-from matlib.packing import Form
+from matlib.packing import AS_GIVEN, Form
 
 __all__ = ["RECURSIONS", "Recursion", "find_recursion"]
 
@@ -51,7 +51,7 @@ class Recursion:
     large_r: str
     right_limit: bool
     reference: str
-    form: Form = Form()
+    form: Form = AS_GIVEN
 
 
 def _exp(r: FloatArray) -> FloatArray:

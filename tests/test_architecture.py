@@ -13,8 +13,8 @@ LAYERS = [  # from the bottom up; a module imports from lower layers, and from i
     "matlib.arrays",
     "matlib.units matlib.tensors matlib.documents",
     "matlib.terms matlib.prony matlib.interconversion matlib.elastic matlib.effective matlib.mode_kernels matlib.shift*",
-    "matlib.material matlib.recursion matlib.routine",
-    "matlib.kernels",
+    "matlib.material matlib.packing matlib.recursion matlib.routine",
+    "matlib.kernels matlib.term_kernels matlib.weight_kernels",
     "matlib.viscoelastic",
     "matlib.card* matlib.shift_tables matlib.shift_findings matlib.finding matlib.admissibility",
     "drivers drivers.history drivers.path drivers.path_file drivers.record_file",
@@ -22,7 +22,7 @@ LAYERS = [  # from the bottom up; a module imports from lower layers, and from i
     "drivers.studies* drivers.sweep*",
     "drivers.report*",
     "drivers.commands*",
-    "drivers.cli",
+    "drivers.cli drivers.pytest_plugin",
 ]
 
 

@@ -10,7 +10,6 @@ from drivers.commands.inputs import gather, read_all
 from drivers.commands.output import deliver, parse_tolerance, require_folder, require_picture, save_figure
 from drivers.commands.reporting import Report
 from drivers.foreign.routine_file import is_routine_file
-from drivers.library import is_folder
 from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.data import comparison_data
@@ -20,7 +19,6 @@ from drivers.studies.compare import Comparison, compare
 from drivers.studies.slips import Slip, find_slips
 from drivers.studies.slips.evidence import Evidence
 from matlib.card import Card, read_card
-from matlib.errors import ParameterError
 
 if TYPE_CHECKING:
     from drivers.report.page import Page
@@ -43,12 +41,6 @@ def run(
     """Compare two cards, or routines in their place, and say where they differ most."""
     require_folder(json_file)
     require_picture(plot)
-    if is_folder(file_a) or is_folder(file_b):
-        from drivers.commands.library import compare_library
-
-        if plot is not None:
-            raise ParameterError("--plot", "left out for folders", repr(plot))
-        return compare_library(file_a, file_b, paths=paths, tolerance=tolerance, json_file=json_file, report=report)
     if is_routine_file(file_a) or is_routine_file(file_b):
         from drivers.commands.compare_routines import run as run_routines
 

@@ -8,7 +8,7 @@ from drivers.baseline_file import Baseline, read_baseline
 from drivers.commands.inputs import gather
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
 from drivers.commands.reporting import Report, inputs_of, origin_of
-from drivers.library import baseline_beside, is_folder
+from drivers.library import baseline_beside
 from drivers.report.baseline import Verified, verified_data, verified_tables
 from drivers.report.progress import progress
 from drivers.spread_file import read_spread
@@ -18,7 +18,7 @@ from drivers.studies.moved import what_moved
 from drivers.studies.slips import Slip
 from drivers.studies.spread import Scatter, scatter
 from matlib.card import Card, read_card
-from matlib.errors import CardproofError, FaultyInputError, ParameterError
+from matlib.errors import CardproofError, FaultyInputError
 
 if TYPE_CHECKING:
     from drivers.report.page import Page
@@ -39,17 +39,9 @@ def run(
     json_file: str | None = None,
     report: Report | None = None,
 ) -> int:
-    """Hold a card against its baseline, or every card of a folder against the baseline beside it."""
+    """Hold a card against its baseline."""
     require_folder(json_file)
     require_picture(plot)
-    if is_folder(card_file):
-        given = {"BASELINE": baseline_file, "--spread": spread, "--plot": plot}
-        for name, value in given.items():
-            if value is not None:
-                raise ParameterError(name, "left out for a folder: each card has its own", repr(value))
-        from drivers.commands.library import verify_library
-
-        return verify_library(card_file, json_file=json_file, report=report)
     file = baseline_file or baseline_beside(card_file)
     card, baseline = gather([lambda: read_card(card_file), lambda: read_baseline(file)])
     assert isinstance(card, Card)

@@ -22,6 +22,9 @@ __all__ = ["ProcessError", "problems", "run_locally"]
 ATTEMPTS = 2
 """Processes that a case may cost; then it counts as failed."""
 
+AHEAD = 2
+"""Stretches that a process is given at once, lest it wait for the next."""
+
 GRACE = 5.0
 """Seconds for a process to end when it is told to."""
 
@@ -79,16 +82,23 @@ def run_locally(plan: Plan, cases: Sequence[Case], processes: int) -> Iterator[t
 
 
 class _Worker:
-    """A process, and the stretch of cases that it is at."""
+    """A process, and the stretches of cases that it was given, the one that it is at first."""
 
     def __init__(self, process: ForkProcess, connection: Connection) -> None:
         self.process, self.connection = process, connection
-        self.at, self.end = 0, 0
+        self.given: deque[Stretch] = deque()
 
     def take(self, stretch: Stretch) -> None:
-        self.at, self.end = stretch
+        self.given.append(stretch)
         with suppress(OSError):  # it has died: its end of the connection will tell
             self.connection.send(stretch)
+
+    def finish(self) -> int:
+        """Count the case that it is at as done, and give its index."""
+        at, end = self.given.popleft()
+        if at + 1 < end:
+            self.given.appendleft((at + 1, end))
+        return at
 
 
 class _Crew:
@@ -112,13 +122,11 @@ class _Crew:
                 except (EOFError, OSError):
                     yield from self.replace(worker)
                     continue
-                yield self.cases[worker.at], outcome
-                worker.at += 1
-                if worker.at == worker.end:
-                    self.occupy(worker)
+                yield self.cases[worker.finish()], outcome
+                self.occupy(worker)
 
     def start(self) -> None:
-        """Start a process on the next stretch."""
+        """Start a process."""
         context = multiprocessing.get_context("fork")
         ours, theirs = context.Pipe()
         process = context.Process(target=_work, args=(self.plan, self.cases, theirs, self.sign, self.hold), daemon=True)
@@ -134,10 +142,11 @@ class _Crew:
         self.occupy(worker)
 
     def occupy(self, worker: _Worker) -> None:
-        """Give a process the next stretch, or let it go."""
-        if self.left:
+        """Give a process what it has to do next, and while there is plenty something to go on with; or let it go."""
+        plenty = len(self.left) > AHEAD * len(self.workers)
+        while self.left and len(worker.given) < (AHEAD if plenty else 1):
             worker.take(self.left.popleft())
-        else:
+        if not worker.given:
             self.dismiss(worker)
 
     def dismiss(self, worker: _Worker) -> None:
@@ -152,14 +161,13 @@ class _Crew:
     def replace(self, worker: _Worker) -> Iterator[tuple[Case, Outcome]]:
         """Put back what a process that died was at; a case that costs too many of them has failed."""
         self.dismiss(worker)
-        at, code = worker.at, worker.process.exitcode or 0
+        code = worker.process.exitcode or 0
+        at, _ = worker.given[0]
         self.lost[at] += 1
         if self.lost[at] >= ATTEMPTS:
             how = f"killed by signal {-code}" if code < 0 else f"exit status {code}"
-            yield self.cases[at], Outcome(error=f"its process was lost {ATTEMPTS} times ({how})")
-            at += 1
-        if at < worker.end:
-            self.left.appendleft((at, worker.end))
+            yield self.cases[worker.finish()], Outcome(error=f"its process was lost {ATTEMPTS} times ({how})")
+        self.left.extendleft(reversed(worker.given))
         if self.left:
             self.start()
 
