@@ -142,7 +142,7 @@ def sweep(capsys):
     """The command in this process: status, standard output, standard error."""
 
     def of(folder: Folder, *options: str) -> tuple[int, str, str]:
-        status = main(["sweep", str(folder.file), "--processes", "1", *options])
+        status = main(["sweep", str(folder.file), "--processes", "2", *options])
         return (status, *capsys.readouterr())
 
     return of

@@ -61,10 +61,10 @@ def cluster(tmp_path) -> Iterator[Cluster]:
 
 
 @with_dask
-def test_a_lost_worker_loses_nothing(folder, cluster):
+def test_a_lost_worker_loses_nothing(folder, sweep, cluster):
     at_home: Folder = folder(samples=SAMPLES)
     workers = [cluster.worker(), cluster.worker()]
-    assert at_home.run("--processes", "2")[0] == 0  # while the workers start
+    assert sweep(at_home)[0] == 0  # while the workers start
     away: Folder = folder(samples=SAMPLES)
     process = away.start("--on", cluster.address)
     assert away.await_count(CASES // 2, process)
@@ -77,7 +77,7 @@ def test_a_lost_worker_loses_nothing(folder, cluster):
 
 
 @with_dask
-def test_killed_or_without_its_scheduler_it_goes_on_where_it_was(folder, cluster):
+def test_killed_or_without_its_scheduler_it_goes_on_where_it_was(folder, sweep, cluster):
     cluster.worker()
     place: Folder = folder(samples=SAMPLES)
     process = place.start("--on", cluster.address)
@@ -96,7 +96,7 @@ def test_killed_or_without_its_scheduler_it_goes_on_where_it_was(folder, cluster
     second = place.seconds()
     assert first.items() < second.items()
 
-    assert place.run("--processes", "2")[0] == 0  # at home: the cases are the same
+    assert sweep(place)[0] == 0  # at home: the cases are the same
     assert second.items() < place.seconds().items()
     assert {row[-1] for row in place.table().values()} == {1}
     assert len(place.table()) == CASES

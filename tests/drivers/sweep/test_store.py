@@ -72,7 +72,7 @@ def test_a_database_that_is_a_folder_is_one_line(folder, sweep):
     assert_refused(sweep(place), "unable to open database file")
 
 
-def test_two_sweeps_on_one_database_are_refused(folder):
+def test_two_sweeps_on_one_database_are_refused(folder, sweep):
     place = folder()
     script = f"""
 import sys, time
@@ -86,10 +86,10 @@ with Store(Path({str(place.database)!r})):
         [sys.executable, "-c", script], stdin=subprocess.PIPE, stdout=subprocess.PIPE, text=True
     ) as other:
         assert other.stdout.readline() == "held\n"
-        assert_refused(place.run(), "another sweep is writing to it")
+        assert_refused(sweep(place), "another sweep is writing to it")
         assert place.count() == 0
         other.communicate("", timeout=60)
-    assert place.run()[0] == 0
+    assert sweep(place)[0] == 0
 
 
 def test_a_lock_file_that_was_left_behind_holds_nobody_up(folder, sweep):
@@ -109,7 +109,7 @@ def test_whoever_waited_for_a_lock_file_that_is_gone_takes_a_new_one(folder, tmp
     assert not name.exists()
 
 
-def test_a_full_disk_ends_with_one_line_and_can_be_resumed(folder):
+def test_a_full_disk_ends_with_one_line_and_can_be_resumed(folder, sweep):
     place = folder(samples=14)
 
     def limited() -> None:  # a file that may not grow: what a full disk is to the database
@@ -121,7 +121,7 @@ def test_a_full_disk_ends_with_one_line_and_can_be_resumed(folder):
     assert_refused((run.returncode, run.stdout, run.stderr), f"{place.database}: database: found ")
     before = place.seconds()
     assert 0 < len(before) < 8 * 15
-    status, _, err = place.run()
+    status, _, err = sweep(place)
     assert (status, err) == (0, "")
     assert before.items() < place.seconds().items()
     assert {row[-1] for row in place.table().values()} == {1}
