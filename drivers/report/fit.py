@@ -10,7 +10,7 @@ from rich.text import Text
 
 from drivers.report.tables import plain_table, temperature_text
 from matlib.card_conversion import ConvertedCard
-from matlib.shift.akaike import student_quantile
+from matlib.shift.fit_statistics import student_quantile
 from matlib.units import ENERGY, TEMPERATURE
 
 __all__ = ["fit_data", "fit_tables"]

@@ -4,17 +4,16 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable
-from typing import TYPE_CHECKING, NamedTuple
+from typing import NamedTuple
 
-if TYPE_CHECKING:
-    from matlib.shift.fit import ShiftFit
+from matlib.shift.fit import ShiftFit
+from matlib.shift.fit_statistics import student_quantile
 
-__all__ = ["AkaikeWeights", "akaike_weights", "corrected_criterion", "student_quantile", "support"]
+__all__ = ["AkaikeWeights", "akaike_weights", "support"]
 
 CLEAR = 0.9
 """Weight from which a form counts as supported: 9 to 1, a difference of 4.4 in the criterion; a convention of ours."""
 
-_ROUNDING = 4.0 * 2.2e-16  # of the largest value: residuals below it are the rounding of the table
 _OFFSET = "an offset temperature (WLF or VFT, which are one law in two forms)"
 
 
@@ -23,56 +22,6 @@ class AkaikeWeights(NamedTuple):
 
     offset: float
     arrhenius: float
-
-
-def corrected_criterion(squares: float, points: int, constants: int, largest: float) -> float | None:
-    r"""Corrected Akaike criterion of a least-squares fit, ``n ln(S/n) + 2 k n/(n - k - 1)``.
-
-    Parameters
-    ----------
-    squares : float
-        Sum of squared residuals S.
-    points, constants : int
-        Points n and fitted constants; the variance is one more, so that ``k = constants + 1``.
-    largest : float
-        Largest of the values that were fitted; residuals below its rounding count as that rounding.
-
-    Returns
-    -------
-    aicc : float or None
-        None with ``n <= k + 1``, where it has no value.
-
-    References
-    ----------
-    C. M. Hurvich, C.-L. Tsai, Biometrika 76 (1989) 297-307; K. P. Burnham, D. R. Anderson, Model Selection and
-    Multimodel Inference, 2nd ed. (2002).  (from memory)
-
-    Examples
-    --------
-    >>> corrected_criterion(10.0, 10, 1, 1.0)
-    5.714285714285714
-    """
-    k = constants + 1
-    if points <= k + 1:
-        return None
-    floor = max(_ROUNDING * largest, 1e-150)
-    variance = max(squares / points, floor * floor)
-    return points * math.log(variance) + 2.0 * k * points / (points - k - 1)
-
-
-def student_quantile(confidence: float, degrees_of_freedom: int) -> float:
-    """How many standard errors make half of a two-sided confidence interval; infinite without a degree of freedom.
-
-    Examples
-    --------
-    >>> round(student_quantile(0.95, 10), 3)
-    2.228
-    """
-    if degrees_of_freedom < 1:
-        return math.inf
-    from scipy.special import stdtrit
-
-    return float(stdtrit(degrees_of_freedom, 0.5 + 0.5 * confidence))
 
 
 def akaike_weights(fits: Iterable[ShiftFit]) -> AkaikeWeights | None:

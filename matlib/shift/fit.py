@@ -11,14 +11,14 @@ from numpy.typing import ArrayLike
 
 from matlib.arrays import BoolArray, FloatArray, frozen, require_positive
 from matlib.errors import ConversionError, ParameterError, PoleError, both_scales
-from matlib.shift.akaike import corrected_criterion, student_quantile, support
 from matlib.shift.base import ShiftLaw
 from matlib.shift.family_constants import NAMES, WRITERS, Style, level_gradient
+from matlib.shift.fit_statistics import corrected_criterion, student_quantile
 from matlib.shift.least_squares import FamilyFit, fit_family
 from matlib.shift.minimax import LOWEST_POLE
 from matlib.units import GAS_CONSTANT
 
-__all__ = ["FORMS", "ShiftFit", "fit_table", "support"]
+__all__ = ["FORMS", "ShiftFit", "fit_table"]
 
 FORMS = tuple(NAMES)
 

@@ -9,9 +9,10 @@ from typing import NamedTuple
 import numpy as np
 
 from matlib.errors import ConversionError, PoleError, both_scales
+from matlib.shift.akaike import support
 from matlib.shift.domain import LARGEST_LN_RATE
 from matlib.shift.family_constants import Style
-from matlib.shift.fit import ShiftFit, fit_table, support
+from matlib.shift.fit import ShiftFit, fit_table
 from matlib.shift.table import Table
 
 __all__ = ["TableFit", "fit_points"]

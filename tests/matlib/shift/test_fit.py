@@ -9,8 +9,9 @@ from hypothesis import strategies as st
 
 from matlib.errors import ConversionError, ParameterError, PoleError
 from matlib.shift import VFT, WLF, Arrhenius, Table, convert_law
-from matlib.shift.akaike import akaike_weights, corrected_criterion, student_quantile
-from matlib.shift.fit import FORMS, fit_table, support
+from matlib.shift.akaike import akaike_weights, support
+from matlib.shift.fit import FORMS, fit_table
+from matlib.shift.fit_statistics import corrected_criterion, student_quantile
 
 LN10 = math.log(10.0)
 R = 8.314462618
