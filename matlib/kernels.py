@@ -1,4 +1,4 @@
-r"""Compiled whole-path kernels, private to `viscoelastic` and `ensemble`: float64 arrays in, preallocated arrays out.
+r"""Compiled whole-path kernels, private to `viscoelastic`: float64 arrays in, preallocated arrays out.
 
 Notation as in `recursion`: `h` are the relaxing deviatoric stresses, `p` the relaxing mean stresses, `theta` the mechanical
 volume strain, `e` deviatoric strain increments; ``G2`` and ``K`` are the equilibrium moduli in shear, doubled, and in volume.
@@ -19,8 +19,8 @@ from matlib.weight_kernels import weigh
 
 __all__ = ["run_block"]
 
-CHUNK = 128
-"""Increments, an even number, whose weights are held at a time; they fit the inner caches."""
+CHUNK = 64
+"""Increments, an even number, whose weights are held at a time; they fit the innermost cache."""
 
 THIRD = 1.0 / 3.0
 IntArray = NDArray[np.int64]
@@ -210,6 +210,59 @@ def _follow_mixed(
 
 
 @plain
+def _run(
+    kind: int,
+    A: float,
+    B: float,
+    dxi: FloatArray,
+    targets: FloatArray,
+    stress_controlled: BoolArray,
+    thermal: FloatArray,
+    G2: float,
+    shear_terms: FloatArray,
+    shear_count: int,
+    shear_given: FloatArray,
+    K: float,
+    bulk_terms: FloatArray,
+    bulk_count: int,
+    bulk_given: FloatArray,
+    strain: FloatArray,
+    theta: FloatArray,
+    h: FloatArray,
+    p: FloatArray,
+    strain_out: FloatArray,
+    stress_out: FloatArray,
+) -> None:
+    """`run_block` with its tuples taken apart: what is compiled and kept on disk knows no class of ours, which may change."""
+    shear_weights = np.zeros((h.shape[0], (CHUNK + 1) * ROW))  # the last row stays that of an increment of nothing
+    bulk_weights = np.zeros((p.shape[0], (CHUNK + 1) * ROW))
+    shear_weights[:, CHUNK * ROW : CHUNK * ROW + TILE] = 1.0
+    pairs, values = np.zeros(CHUNK // 2, dtype=np.int64), np.zeros(CHUNK)
+    e, rest = np.zeros((CHUNK, 6)), np.zeros((2, 6))
+    mixed = stress_controlled.any()
+    for first in range(0, dxi.size, CHUNK):
+        count = min(CHUNK, dxi.size - first)
+        found = _distinct(kind == GIVEN, dxi, first, count, pairs, values)
+        if kind == GIVEN:
+            _take_given(shear_given, first, count, shear_weights)
+            _take_given(bulk_given, first, count, bulk_weights)
+        else:
+            weigh(kind, A, B, values, found, shear_terms, shear_count, shear_weights)
+            weigh(kind, A, B, values, found, bulk_terms, bulk_count, bulk_weights)
+        if mixed:
+            _follow_mixed(
+                first, count, targets, stress_controlled, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count,
+                bulk_weights, strain, theta, h, p, e, strain_out, stress_out,
+            )  # fmt: skip
+        else:
+            _follow_strains(
+                first, count, targets, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count, bulk_weights,
+                strain, theta, h, p, e, rest, stress_out,
+            )  # fmt: skip
+        forget(h)
+        forget(p)
+
+
 def run_block(
     form: Form,
     dxi: FloatArray,
@@ -241,34 +294,26 @@ def run_block(
     strain_out, stress_out : (n, 6)
         Where all strains are given `strain_out` is left alone: it would repeat `targets`.
     """
-    kind, A, B = form
-    G2, shear_terms, shear_count, shear_given = shear
-    K, bulk_terms, bulk_count, bulk_given = bulk
-    strain, theta, h, p = state
-    shear_weights = np.zeros((h.shape[0], (CHUNK + 1) * ROW))  # the last row stays that of an increment of nothing
-    bulk_weights = np.zeros((p.shape[0], (CHUNK + 1) * ROW))
-    shear_weights[:, CHUNK * ROW : CHUNK * ROW + TILE] = 1.0
-    pairs, values = np.zeros(CHUNK // 2, dtype=np.int64), np.zeros(CHUNK)
-    e, rest = np.zeros((CHUNK, 6)), np.zeros((2, 6))
-    mixed = stress_controlled.any()
-    for first in range(0, dxi.size, CHUNK):
-        count = min(CHUNK, dxi.size - first)
-        found = _distinct(kind == GIVEN, dxi, first, count, pairs, values)
-        if kind == GIVEN:
-            _take_given(shear_given, first, count, shear_weights)
-            _take_given(bulk_given, first, count, bulk_weights)
-        else:
-            weigh(kind, A, B, values, found, shear_terms, shear_count, shear_weights)
-            weigh(kind, A, B, values, found, bulk_terms, bulk_count, bulk_weights)
-        if mixed:
-            _follow_mixed(
-                first, count, targets, stress_controlled, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count,
-                bulk_weights, strain, theta, h, p, e, strain_out, stress_out,
-            )  # fmt: skip
-        else:
-            _follow_strains(
-                first, count, targets, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count, bulk_weights,
-                strain, theta, h, p, e, rest, stress_out,
-            )  # fmt: skip
-        forget(h)
-        forget(p)
+    _run(
+        form.kind,
+        form.a,
+        form.b,
+        dxi,
+        targets,
+        stress_controlled,
+        thermal,
+        shear.equilibrium,
+        shear.packed,
+        shear.width,
+        shear.given,
+        bulk.equilibrium,
+        bulk.packed,
+        bulk.width,
+        bulk.given,
+        state.strain,
+        state.theta,
+        state.h,
+        state.p,
+        strain_out,
+        stress_out,
+    )
