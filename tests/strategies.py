@@ -315,7 +315,8 @@ def segments(
     if draw(st.integers(0, 3)) == 0:
         held[list(driven)] = True
     for c in driven if len(driven) == 6 else driven[:1]:
-        targets[c] = draw(st.floats(-1.0, 1.0)) * (1e6 if stress_controlled[c] else 0.02)
+        part = draw(st.floats(-1.0, 1.0).map(lambda x: round(x, 9)))  # nothing that underflows
+        targets[c] = part * (1e6 if stress_controlled[c] else 0.02)
     if len(driven) < 6:
         targets[list(driven)] = targets[driven[0]]
     return Segment(

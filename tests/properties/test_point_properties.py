@@ -107,7 +107,9 @@ def test_the_fast_lane_and_the_stepwise_lane_are_equal_to_rounding(material, pat
 @few
 def test_responses_add_up_apart_from_the_thermal_one_that_both_share(material, path, data):
     count, routine = len(path.segments), LinearViscoelastic(material=material)
-    factors = np.array(data.draw(st.lists(st.floats(-3.0, 3.0), min_size=count, max_size=count)))
+    factors = np.array(
+        data.draw(st.lists(st.floats(-3.0, 3.0).map(lambda x: round(x, 9)), min_size=count, max_size=count))
+    )
     none = drive(routine, times(path, np.zeros(count)))
     one, other = drive(routine, path), drive(routine, times(path, factors))
     both = drive(routine, times(path, 1.0 + factors))
