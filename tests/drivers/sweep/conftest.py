@@ -18,7 +18,8 @@ from drivers.cli import main
 from tests.drivers.files import CARD, PATH, SOFTER
 
 RULES = '[{ shift_rule = "integrated" }, { shift_rule = "middle", recursion = "midpoint" }]'
-COLD = PATH.replace('"pull, dwell, quench"', '"colder"').replace("temperature = 70.0", "temperature = 66.0")
+SHORT = PATH.partition("[[segment]]\nrepeat")[0]  # the pull and the dwell
+WARM = SHORT.replace('"pull, dwell, quench"', '"heated"').replace("strain = 0.01", "strain = 0.01\ntemperature = 90.0")
 
 
 def sweep_text(
@@ -45,8 +46,8 @@ class Folder:
         (place / "cards").mkdir(parents=True)
         (place / "cards" / "a.card.toml").write_text(CARD)
         (place / "cards" / "b.card.toml").write_text(SOFTER)
-        (place / "p.path.toml").write_text(PATH)
-        (place / "q.path.toml").write_text(COLD)
+        (place / "p.path.toml").write_text(SHORT)
+        (place / "q.path.toml").write_text(WARM)
         self.file, self.database = place / "s.sweep.toml", place / "sweep.sqlite"
         self.file.write_text(sweep_text(**changes))  # type: ignore[arg-type]
 
