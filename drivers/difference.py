@@ -48,29 +48,32 @@ class Difference:
     at: Where
 
 
-def largest_difference(first: History, second: History) -> Difference:
+def largest_difference(first: History, second: History, *, negligible_stress: float = 0.0) -> Difference:
     """Largest difference of two histories with the same rows.
 
     Parameters
     ----------
     first, second : History
         Of the same length; the first gives the peaks and the place.
+    negligible_stress : float, optional
+        A peak stress up to this is rounding, and not compared [Pa].
 
     Returns
     -------
     Difference
-        Of stress, unless strain differs more; of size 0 at the start where nothing differs.
+        Of stress, unless strain differs more; of size 0 at the start where nothing differs, infinite where a response is
+        not a number.
     """
     start = Where(segment=first.segment[0], time=float(first.time[0]), temperature=float(first.temperature[0]))
     best = Difference(quantity="stress", component=STRESS_COMPONENTS[0], value=0.0, relative=0.0, at=start)
-    for quantity, names, a, b in (
-        ("stress", STRESS_COMPONENTS, first.stress_components, second.stress_components),
-        ("strain", STRAIN_COMPONENTS, first.strain_components, second.strain_components),
+    for quantity, names, a, b, negligible in (
+        ("stress", STRESS_COMPONENTS, first.stress_components, second.stress_components, negligible_stress),
+        ("strain", STRAIN_COMPONENTS, first.strain_components, second.strain_components, 0.0),
     ):
-        peak = float(np.abs(a).max()) or float(np.abs(b).max())
+        peak = _peak(a, negligible) or _peak(b, negligible)
         if peak == 0.0:
             continue
-        gap: FloatArray = np.abs(a - b)
+        gap: FloatArray = np.nan_to_num(np.abs(a - b), nan=math.inf, posinf=math.inf)
         row, component = (int(i) for i in np.unravel_index(int(gap.argmax()), gap.shape))
         value = float(gap[row, component])
         if value / peak > best.relative:
@@ -84,6 +87,12 @@ def largest_difference(first: History, second: History) -> Difference:
                 ),
             )
     return best
+
+
+def _peak(values: FloatArray, negligible: float) -> float:
+    """Largest magnitude, zero where negligible; what is not a number is left out."""
+    peak = float(np.max(np.abs(values), initial=0.0, where=np.isfinite(values)))
+    return peak if peak > negligible else 0.0
 
 
 def relative_gaps(first: History, second: History, quantity: str) -> FloatArray:

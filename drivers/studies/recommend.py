@@ -8,21 +8,22 @@ from dataclasses import dataclass
 import numpy as np
 
 from drivers.path import Path, Segment, fractions
-from drivers.studies.ladder import total_increments
-from drivers.studies.trial import Counts, Rule, Trials
+from drivers.studies.shares import AIM, added, moved, pieces_by_segment, weights_of
+from drivers.studies.trial import Counts, Judged, Rule, Trials, total_increments
+from matlib.arrays import FloatArray
 
 __all__ = ["Advice", "Recommendation", "recommend"]
 
-LARGEST_RUN = 400_000
-"""Increments of a recommended run at most."""
+WASTEFUL = 0.5
+"""A run whose error is a smaller share of the tolerance than this takes more increments than it has to."""
 
-AIM = 0.7
-"""Share of the tolerance that a recommendation aims at: small enough, and not wasteful."""
+ROUNDS = 20
 
-WASTEFUL = 0.4
-PROBE = 16
-FINE = 4
-ROUNDS = 12
+FINE = 64
+"""From this many on, the increments of a segment are a whole number from 32 to 64 times a power of two, so that runs are nested."""
+
+JUDGED_ROWS, FEW_ROWS = 10_000, 1000
+"""Increment ends that truth is asked for at most, and where it is dear; of longer runs at every second, fourth ... of them."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -69,87 +70,107 @@ def recommend(trials: Trials, rule: Rule, tolerance: float) -> Recommendation | 
     Returns
     -------
     Recommendation or None
-        Verified by a run against the reference solution at its own increment ends; None where that takes more than
-        `LARGEST_RUN` increments.
+        Verified by a run at its own increment ends; None where that takes more than the runner's largest run.
 
     Notes
     -----
     Coarsening one segment at a time shows its share of the error, ``C n**-p``. The least increments whose shares sum to the
-    tolerance have ``n`` in proportion to ``(C / rounds)**(1/(p+1))``; the size follows from the tolerance, and is corrected by what
-    runs show.
+    tolerance have ``n`` in proportion to ``(C / rounds)**(1/(p+1))``. Their common size is then searched by runs, and where
+    whole numbers leave it too fine, increments are taken off single segments.
     """
-    order = trials.runner.order(rule)
-    shares = _shares(trials, rule)
-    rounds = np.bincount([index for index, _, _ in trials.path.unrolled()], minlength=len(shares)).astype(np.float64)
-    weights = (np.maximum(shares, 1e-6 * max(shares.max(), 1e-300)) * PROBE**order / rounds) ** (1.0 / (order + 1.0))
-    size = (float((shares * PROBE**order / weights**order).sum()) / (AIM * tolerance)) ** (1.0 / order)
-
-    def counts_of(scale: float) -> Counts:
-        return tuple(max(1, math.ceil(scale * w)) for w in weights)
-
-    best: tuple[float, Counts] | None = None
-    tried: dict[Counts, float] = {}
-    low, high = 0.0, math.inf
-    for _ in range(ROUNDS):
-        counts = counts_of(size)
-        if total_increments(trials.path, counts) > LARGEST_RUN:
-            break
-        if counts not in tried:
-            tried[counts] = trials.difference(rule, counts).relative
-        error = tried[counts]
-        if error <= tolerance:
-            high = min(high, size)
-            if best is None or total_increments(trials.path, counts) < total_increments(trials.path, best[1]):
-                best = (error, counts)
-            if error >= WASTEFUL * tolerance or all(n == 1 for n in counts):
-                break
-        else:
-            low = max(low, size)
-        wanted = size * (max(error, 1e-3 * tolerance) / (AIM * tolerance)) ** (1.0 / order)
-        if not low < wanted < high:
-            wanted = math.sqrt(low * high) if low > 0.0 and high < math.inf else wanted
-        if high < math.inf and low > 0.0 and counts_of(low) == counts_of(high):
-            break
-        size = wanted
-    if best is None:
+    search = _Search(trials=trials, rule=rule, tolerance=tolerance)
+    tries = (search.scaled(*weights_of(trials, rule, tolerance, shares)) for shares in (moved, added))
+    counts = next((found for found in tries if found is not None), None)
+    if counts is None:
         return None
-    error, counts = _trimmed(trials, rule, tolerance, *best)
-    advice = tuple(_advice(trials.path, segment, n) for segment, n in zip(trials.path.segments, counts, strict=True))
+    counts = search.trimmed(counts)
+    path = trials.path
     return Recommendation(
-        advice=advice, counts=counts, increments=total_increments(trials.path, counts), relative_error=error
+        advice=tuple(_advice(path, segment, n) for segment, n in zip(path.segments, counts, strict=True)),
+        counts=counts,
+        increments=total_increments(path, counts),
+        relative_error=search.error(counts),
     )
 
 
-def _shares(trials: Trials, rule: Rule) -> np.ndarray:
-    """Error of each segment at `PROBE` increments, with all others `FINE` times finer."""
-    fine = tuple(FINE * PROBE for _ in trials.path.segments)
-    at = tuple(PROBE for _ in trials.path.segments)
-    rest = trials.difference(rule, fine, at=at).relative
-    shares = []
-    for k, segment in enumerate(trials.path.segments):
-        if not np.any(segment.durations > 0.0):
-            shares.append(0.0)
-            continue
-        counts = tuple(PROBE if j == k else n for j, n in enumerate(fine))
-        coarse = trials.difference(rule, counts, at=at).relative
-        shares.append(max(coarse - rest, rest / (16.0 * len(fine))))
-    return np.array(shares)
+@dataclass(slots=True, kw_only=True, eq=False)
+class _Search:
+    """Runs of one rule, each judged at its own increment ends."""
 
+    trials: Trials
+    rule: Rule
+    tolerance: float
 
-def _trimmed(trials: Trials, rule: Rule, tolerance: float, error: float, counts: Counts) -> tuple[float, Counts]:
-    """Take increments off single segments where a whole number too many was given."""
-    if error >= WASTEFUL * tolerance:
-        return error, counts
-    for k in sorted(range(len(counts)), key=lambda k: -counts[k]):
-        while counts[k] > 1:
-            fewer = tuple(max(1, (3 * n) // 4) if j == k else n for j, n in enumerate(counts))
-            less = trials.difference(rule, fewer).relative
-            if less > tolerance:
+    def judge(self, counts: Counts) -> Judged:
+        return self.trials.judge(self.rule, counts, self._at(counts))
+
+    def error(self, counts: Counts) -> float:
+        return self.judge(counts).relative
+
+    def meets(self, counts: Counts) -> bool:
+        return self.judge(counts).meets(self.tolerance)
+
+    def frugal(self, counts: Counts) -> bool:
+        return self.meets(counts) and (self.error(counts) >= WASTEFUL * self.tolerance or max(counts) == 1)
+
+    def _at(self, counts: Counts) -> Counts:
+        rows = JUDGED_ROWS if self.trials.runner.thorough else FEW_ROWS
+        while total_increments(self.trials.path, counts) > rows:
+            halved = tuple(n // 2 if n >= FINE and n % 2 == 0 else n for n in counts)
+            if halved == counts:
                 break
-            error, counts = less, fewer
-            if error >= WASTEFUL * tolerance:
-                return error, counts
-    return error, counts
+            counts = halved
+        return counts
+
+    def scaled(self, weights: FloatArray, size: float, order: float) -> Counts | None:
+        """The smallest multiple of `weights` found whose run meets the tolerance."""
+        largest = self.trials.runner.largest_run / max(1.0, float(weights @ pieces_by_segment(self.trials.path)))
+        low, high, before = 0.0, math.inf, math.inf  # sizes; the largest weight is 1
+        best: Counts | None = None
+        size = min(size, largest)
+        for _ in range(ROUNDS):
+            counts = tuple(_nested(size * w) for w in weights)
+            error = min(1.0, self.error(counts))
+            if self.meets(counts):
+                high, best = size, counts
+                if self.frugal(counts):
+                    break
+            else:
+                low = size
+            if low >= largest or high - low < 1.0:
+                break
+            wanted = size * (max(error, 1e-3 * self.tolerance) / (AIM * self.tolerance)) ** (1.0 / order)
+            if high == math.inf:  # an error that hardly falls yet is left behind in larger strides
+                size = min(max(wanted, (2.0 if error > 0.7 * before else 1.0) * size), largest)
+            else:
+                size = wanted if low < wanted < high else math.sqrt(max(low, 0.25 * high) * high)
+            before = error
+        return best
+
+    def trimmed(self, counts: Counts) -> Counts:
+        """Take increments off single segments, as many as the tolerance allows, where the run is finer than it has to be."""
+        for k in sorted(range(len(counts)), key=lambda k: -counts[k]):
+            low, high = 0, counts[k]
+            while low < (middle := _nested((low + high) / 2)) < high and not self.frugal(counts):
+                fewer = (*counts[:k], middle, *counts[k + 1 :])
+                if self.meets(fewer):
+                    high, counts = middle, fewer
+                else:
+                    low = middle
+        return counts
+
+
+def _nested(wanted: float) -> int:
+    """A whole number of increments, at least as many as wanted.
+
+    Examples
+    --------
+    >>> _nested(0.2), _nested(63.5), _nested(1000.0)
+    (1, 64, 1008)
+    """
+    count = max(1, math.ceil(wanted))
+    step = 2 ** max(0, math.ceil(math.log2(count / FINE)))
+    return step * -(-count // step)
 
 
 def _advice(path: Path, segment: Segment, count: int) -> Advice:
@@ -159,18 +180,19 @@ def _advice(path: Path, segment: Segment, count: int) -> Advice:
         segment=segment.label,
         increments=count,
         largest_increment=longest * share,
-        largest_temperature_change=_temperature_span(path, segment) * (share if longest > 0.0 else 1.0),
+        largest_temperature_change=_temperature_change(path, segment, share),
     )
 
 
-def _temperature_span(path: Path, wanted: Segment) -> float:
-    """Largest temperature change over a piece of a segment, wherever it runs [K]."""
-    T, span = path.start_temperature, 0.0
+def _temperature_change(path: Path, wanted: Segment, share: float) -> float:
+    """Largest over an increment of a segment, wherever it runs, the longest being `share` of its piece; a jump is one [K]."""
+    T, largest = path.start_temperature, 0.0
     for _, _, segment in path.unrolled():
         ends = segment.temperatures
         if ends is None:
             continue
         if segment is wanted:
-            span = max(span, float(np.abs(np.diff(ends, prepend=T)).max()))
+            changes = np.abs(np.diff(ends, prepend=T)) * np.where(segment.durations > 0.0, share, 1.0)
+            largest = max(largest, float(changes.max()))
         T = float(ends[-1])
-    return span
+    return largest

@@ -6,12 +6,15 @@ import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from drivers.difference import Difference, largest_difference, relative_gaps
+import numpy as np
+
+from drivers.difference import Difference, relative_gaps
 from drivers.path import Path
 from drivers.studies.blame import Blame, find_blame
 from drivers.studies.ladder import RuleResult, climb
 from drivers.studies.recommend import Recommendation, recommend
-from drivers.studies.trial import CardRunner, Rule, Runner, Trials
+from drivers.studies.runner import CardRunner, Rule, Runner
+from drivers.studies.trial import Counts, Trials
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
@@ -20,6 +23,11 @@ __all__ = ["Course", "Rule", "StepsResult", "steps"]
 
 TIGHTEST = 1e-9
 """Smallest tolerance: below it the reference solution itself would have to be bounded more tightly than rounding allows."""
+
+SHARPNESS = 1e-3
+"""Half-width of the reference solutions as a part of the tolerance."""
+
+FINEST, COARSEST = 1e-10, 1e-5
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -53,18 +61,22 @@ class StepsResult:
     rule : Rule
         The rule that `own` and `recommended` are for.
     own : Difference
-        Error of the path's own increments.
+        Error of the path's own increments; infinite where the rule has no finite response with them.
     course : Course
         The same over the time of the path.
+    own_bound : float
+        Half-width of the reference solution that this was judged on, as a fraction of the peak.
     reference_bound : float
         Largest relative half-width of the reference solutions that were used.
     estimated : bool
         Whether that bound is an estimate.
     rules : tuple of RuleResult
     recommended : Recommendation or None
-        None where no count within the limit meets the tolerance.
+        None where nothing up to `largest_run` meets the tolerance.
     blame : Blame or None
         Which segment the own error comes from, and why; None where there is no error to speak of.
+    largest_run : int
+        Increments beyond which nothing was tried.
     basis : str
         What the errors are judged on, in words.
     """
@@ -74,17 +86,19 @@ class StepsResult:
     rule: Rule
     own: Difference
     course: Course
+    own_bound: float
     reference_bound: float
     estimated: bool
     rules: tuple[RuleResult, ...]
     recommended: Recommendation | None
     blame: Blame | None
+    largest_run: int
     basis: str = "the reference solution"
 
     @property
     def holds(self) -> bool:
         """Whether the path's own increments meet the tolerance, the reference solution's bound allowed for."""
-        return self.own.relative + self.reference_bound <= self.tolerance
+        return self.own.relative + self.own_bound <= self.tolerance
 
 
 def steps(
@@ -125,27 +139,37 @@ def steps(
     """
     if not (math.isfinite(tolerance) and TIGHTEST <= tolerance <= 1.0):
         raise ParameterError("tolerance", f"from {TIGHTEST:g} to 1", tolerance)
-    accuracy = min(1e-7, max(1e-10, 0.01 * tolerance))
+    accuracy = min(COARSEST, max(FINEST, SHARPNESS * tolerance))
     runner = subject if isinstance(subject, Runner) else CardRunner(material=subject)
     trials = Trials(runner=runner, path=path, accuracy=accuracy, done=progress)
     counts = tuple(segment.increments for segment in path.segments)
-    truth, response = trials.reference(counts).history, trials.run(rule, counts)
-    own = largest_difference(truth, response)
-    course = Course(time=truth.time, error=relative_gaps(truth, response, own.quantity), segment=truth.segment)
+    own = trials.difference(rule, counts)
+    course = _course(trials, rule, counts, own)
     recommended = recommend(trials, rule, tolerance)
-    blame = find_blame(trials, rule, counts, own)
+    blame = find_blame(trials, rule, counts, own) if own.relative < math.inf else None
     climbed = tuple(climb(trials, one, tolerance) for one in rules)
-    references = trials.references.values()
+    solutions = trials.solutions()
     return StepsResult(
         path=path,
         tolerance=tolerance,
         rule=rule,
         own=own,
         course=course,
-        reference_bound=max(reference.relative_bound for reference in references),
-        estimated=any(reference.estimated for reference in references),
+        own_bound=trials.reference(counts).relative_bound,
+        reference_bound=max(solution.relative_bound for solution in solutions),
+        estimated=any(solution.estimated for solution in solutions),
         rules=climbed,
         recommended=recommended,
         blame=blame,
+        largest_run=runner.largest_run,
         basis=runner.basis,
     )
+
+
+def _course(trials: Trials, rule: Rule, counts: Counts, own: Difference) -> Course:
+    """Nothing but zeros where the run has no finite response."""
+    truth = trials.reference(counts).history
+    error = np.zeros(len(truth))
+    if own.relative < math.inf:
+        error = relative_gaps(truth, trials.run(rule, counts), own.quantity)
+    return Course(time=truth.time, error=error, segment=truth.segment)
