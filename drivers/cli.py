@@ -306,7 +306,9 @@ def verify(
     from drivers.commands import either
 
     raise typer.Exit(
-        either.verify(card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json, report=report)
+        either.verify(
+            card, baseline, spread=spread, samples=samples, seed=seed, plot=plot, json_file=json, report=report
+        )
     )
 
 
