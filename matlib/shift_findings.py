@@ -60,10 +60,10 @@ def law_findings(card: Card, material: Material) -> list[Finding]:
 
 
 def _turning_points(law: Polynomial, low: float, high: float) -> list[Finding]:
-    """Where a polynomial does not fall between two temperatures [K]; about T_ref, where no service window is stated."""
+    """Where a polynomial does not fall between two temperatures [K]; near T_ref, where no service window is stated."""
     where = "inside the service window"
-    if low == 0.0 and math.isinf(high):
-        low, high, where = law.T_ref - 1.0, law.T_ref + 1.0, "beside T_ref"
+    if low == 0.0 or math.isinf(high):
+        low, high, where = *_nearby(law.T_ref, low, high), "beside T_ref"
     turns = [f"turns at {both_scales(T)}" for T in law.knots if low < T < high]
     log10_a = np.polynomial.Polynomial([0.0, *law.coefficients])
     if not turns and low < high and log10_a(high - law.T_ref) >= log10_a(low - law.T_ref):
@@ -77,6 +77,12 @@ def _turning_points(law: Polynomial, low: float, high: float) -> list[Finding]:
         )
         for turn in turns
     ]
+
+
+def _nearby(T_ref: float, low: float, high: float) -> tuple[float, float]:
+    """Two kelvin about T_ref, or at the end of the used range that is nearest to it."""
+    middle = min(max(T_ref, low + 1.0), high - 1.0)
+    return middle - 1.0, middle + 1.0
 
 
 def _table_reference(law: Table) -> list[Finding]:

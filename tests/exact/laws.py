@@ -41,8 +41,8 @@ def exact_ln_shift(law: ShiftLaw) -> Callable[[Number], Number]:
             B = mp.mpf(law.activation_energy) / mp.mpf(law.gas_constant)
             return lambda T: B / T - B / T_ref
         case Polynomial():
-            c = [mp.log(10) * mp.mpf(value) for value in reversed(law.coefficients.tolist())]
-            return lambda T: (T - T_ref) * mp.polyval(c, T - T_ref)
+            c = [mp.log(10) * mp.mpf(value) for value in law.coefficients.tolist()]
+            return lambda T: mp.fsum(a * (T - T_ref) ** k for k, a in enumerate(c, start=1))
         case Table():
             return _table(law)
         case Crossover():
