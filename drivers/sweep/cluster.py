@@ -34,6 +34,8 @@ PATIENCE = 20.0
 COUNT_AGAIN = 5.0
 """Seconds after which the workers are counted again."""
 
+LOST = "the scheduler is lost; start the sweep again when it is back"
+
 Chunk = list[Case]
 
 
@@ -101,14 +103,18 @@ class _Feed:
         completed = as_completed(loop=self.client.loop, raise_errors=False)
         self.fill(completed)
         for future in completed:
-            chunk = self.pending.pop(future)
-            if future.status == "finished":
-                outcomes = self.result(future)
+            chunk, status = self.pending.pop(future), future.status
+            outcomes = self.result(future) if status == "finished" else None
+            if outcomes is not None:
                 self.seconds += sum(outcome.seconds for outcome in outcomes)
                 self.finished += len(outcomes)
                 yield from zip(chunk, outcomes, strict=True)
-            else:
+            elif status == "error":
                 yield from self.failed(future, chunk, completed)
+            elif status == "cancelled" or self.client.status != "running":
+                raise ClusterError(self.address, LOST)
+            else:  # it was finished, and lost with its worker before it was here; the scheduler has it run again
+                self.watch(future, chunk, completed)
             self.fill(completed)
 
     def fill(self, completed: Any) -> None:
@@ -135,6 +141,9 @@ class _Feed:
     def submit(self, chunk: Chunk, completed: Any) -> None:
         with self.told():
             future = self.client.submit(run_chunk, __version__, self.plan.part(chunk), chunk, pure=False)
+        self.watch(future, chunk, completed)
+
+    def watch(self, future: Any, chunk: Chunk, completed: Any) -> None:
         self.pending[future] = chunk
         completed.add(future)
 
@@ -151,14 +160,19 @@ class _Feed:
         for case in chunk:
             self.submit([case], completed)
 
-    def result(self, future: Any) -> list[Outcome]:
+    def result(self, future: Any) -> list[Outcome] | None:
+        """What a chunk gave; None where its worker is lost before it has said."""
+        from distributed import TimeoutError as Late
+        from distributed.scheduler import KilledWorker
+
         with self.told():
-            outcomes: list[Outcome] = future.result(timeout=PATIENCE)
+            try:
+                outcomes: list[Outcome] = future.result(timeout=PATIENCE)
+            except (TimeoutError, Late, KilledWorker):
+                return None
             return outcomes
 
     def error(self, future: Any) -> BaseException:
-        if future.status != "error":
-            raise ClusterError(self.address, "the scheduler is lost; start the sweep again when it is back")
         with self.told():
             found: BaseException = future.exception(timeout=PATIENCE)
             return found
@@ -171,8 +185,7 @@ class _Feed:
         try:
             yield
         except (CancelledError, OSError, RuntimeError, TimeoutError) as error:
-            reason = f"the scheduler is lost ({type(error).__name__}: {error}); start the sweep again when it is back"
-            raise ClusterError(self.address, reason) from None
+            raise ClusterError(self.address, f"{LOST} ({type(error).__name__}: {error})") from None
 
 
 @contextmanager
