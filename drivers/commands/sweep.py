@@ -61,7 +61,8 @@ def run(
         from drivers.report.sweep_page import sweep_page
 
         swept = plan.sweep
-        files = [(file, "sweep"), *((card, "card") for card in swept.cards), *((path, "path") for path in swept.paths)]
+        named = [*((card, "card") for card in swept.cards), *((path, "path") for path in swept.paths)]
+        files = [(file, "sweep"), *((str(swept.folder / name), what) for name, what in named)]
         outputs = [(csv, "all rows"), (parquet, "all rows")]
         return sweep_page(result, origin_of(wanted, inputs_of(wanted, files), outputs))
 

@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import itertools
 import math
+from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 from matplotlib.figure import Figure
+from matplotlib.ticker import FuncFormatter
 
 from drivers.history import History
 from matlib.arrays import FloatArray
@@ -15,6 +17,7 @@ from matlib.units import TIME, Unit
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
+    from matplotlib.axis import Axis
 
 __all__ = [
     "BAND",
@@ -28,6 +31,7 @@ __all__ = [
     "finish",
     "label_lines",
     "log_times",
+    "short_name",
     "small_figure",
     "time_unit",
 ]
@@ -42,6 +46,10 @@ BAND: dict[str, Any] = {"facecolor": "#9ca3af", "alpha": 0.35, "linewidth": 0.0}
 
 SIZE = (4.8, 3.4)  # inches: letters of 9 points are 9 pixels high where the picture is 380 wide
 LABEL, TICK = 10, 9
+FEW_DECADES = 1.6
+LONGEST = 26
+"""Letters of a name in a picture."""
+
 MOST = 4000
 """Points of a line; a screen has fewer."""
 
@@ -61,9 +69,25 @@ def finish(axes: Axes, x: str, y: str, title: str = "") -> None:
     axes.tick_params(labelsize=TICK)
     axes.xaxis.get_offset_text().set_fontsize(TICK)
     axes.yaxis.get_offset_text().set_fontsize(TICK)
+    for axis in (axes.xaxis, axes.yaxis):
+        if axis.get_scale() == "log":
+            axis.set_minor_formatter(FuncFormatter(_minor_label(axis)))
     axes.grid(True, color="#d1d5db", linewidth=0.5)
     axes.set_axisbelow(True)
     axes.spines[["top", "right"]].set_visible(False)
+
+
+def _minor_label(axis: Axis) -> Callable[[float, int | None], str]:
+    """Names for the ticks between decades: at 2 and 5, and only where there are hardly any decades."""
+
+    def name(value: float, _: int | None = None) -> str:
+        low, high = sorted(axis.get_view_interval())
+        exponent = math.floor(math.log10(value) + 1e-9)
+        digit = round(value / 10.0**exponent)
+        few = low > 0.0 and math.log10(high / low) < FEW_DECADES
+        return rf"$\mathdefault{{{digit}\times10^{{{exponent}}}}}$" if few and digit in (2, 5) else ""
+
+    return name
 
 
 def label_lines(figure: Figure, columns: int = 3) -> None:
@@ -86,6 +110,11 @@ def draw_line(axes: Axes, x: FloatArray, y: FloatArray, **style: Any) -> None:
         rows = np.array(sorted(kept))
         x, y = x[rows], y[rows]
     axes.plot(x, y, **style)
+
+
+def short_name(name: str) -> str:
+    """A name as a picture has room for it."""
+    return name if len(name) <= LONGEST else f"{name[: LONGEST - 3]}..."
 
 
 def time_unit(duration: float) -> Unit:

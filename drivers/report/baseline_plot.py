@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from matplotlib.figure import Figure
 
-from drivers.report.axes import BAND, FIRST, INK, SECOND, THIRD, finish, time_unit
+from drivers.report.axes import BAND, FIRST, INK, SECOND, THIRD, finish, short_name, time_unit
 from drivers.report.baseline import Verified
 from drivers.report.response_plot import Shown, main_component, scale_time
 from drivers.studies.baseline import PathVerdict
@@ -115,5 +115,5 @@ def draw_ratios(axes: Axes, paths: tuple[PathVerdict, ...], title: str = "") -> 
             axes.plot([max(path.ratio, LEAST_RATIO)], [k], marker="o" if path.holds else "s", color=color, linestyle="")
     axes.axvline(1.0, color="black", linewidth=0.8)
     axes.set_xscale("log")
-    axes.set_yticks(range(len(ordered)), [path.name for path in ordered], parse_math=False)
+    axes.set_yticks(range(len(ordered)), [short_name(path.name) for path in ordered], parse_math=False)
     finish(axes, "change in units of the tolerance [-]", "", title)

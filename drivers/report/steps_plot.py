@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from matplotlib.figure import Figure
 
-from drivers.report.axes import FIRST, INK, LIMIT, draw_line, finish, time_unit
+from drivers.report.axes import FIRST, INK, LIMIT, draw_line, finish, short_name, time_unit
 from drivers.studies.ladder import RuleResult
 from drivers.studies.steps import StepsResult
 
@@ -80,7 +80,7 @@ def draw_course(axes: Axes, result: StepsResult) -> None:
     draw_line(axes, time, np.maximum(course.error, LEAST), label="own increments", **FIRST)
     axes.axhline(result.tolerance, label="tolerance", **LIMIT)
     if result.blame is not None:
-        label: str | None = f"segment {result.blame.segment}"
+        label: str | None = short_name(f"segment {result.blame.segment}")
         for first, last in _runs(course.segment, result.blame.segment)[:MOST_SEGMENTS]:
             edges = time[max(first - 1, 0)], time[last]
             axes.axvspan(*edges, facecolor="#9ca3af", alpha=0.35, linewidth=0.0, label=label, zorder=0)

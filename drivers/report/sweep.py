@@ -119,7 +119,7 @@ def draw_worst(axes: Axes, result: SweepResult) -> None:
     """The largest errors, one a row."""
     from pathlib import Path
 
-    from drivers.report.axes import INK, LIMIT, SECOND, finish
+    from drivers.report.axes import INK, LIMIT, SECOND, finish, short_name
 
     rows = list(reversed(worst_cases(result)))
     over = {id(row) for row in result.beyond}
@@ -131,6 +131,7 @@ def draw_worst(axes: Axes, result: SweepResult) -> None:
         )  # fmt: skip
     axes.axvline(result.plan.sweep.tolerance, label="tolerance", **LIMIT)
     axes.set_xscale("log")
-    names = [f"{Path(row['card']).name.partition('.')[0]} {row['sample'] or ''}".strip() for row in rows]
+    cards = [short_name(Path(row["card"]).name.partition(".")[0]) for row in rows]
+    names = [f"{card} {row['sample'] or ''}".strip() for card, row in zip(cards, rows, strict=True)]
     axes.set_yticks(range(len(rows)), names, parse_math=False)
     finish(axes, "largest error of a case / peak [-]", "card, sample")
