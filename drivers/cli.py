@@ -56,6 +56,11 @@ ReportFile = Annotated[
 Plot = Annotated[str | None, typer.Option("--plot", metavar="FILE", help="Draw the result: .png, .svg or .pdf.")]
 
 
+def _example(command: str) -> str:
+    r"""A worked example for the end of a command's help; ``\b`` keeps it on one line, to be copied."""
+    return f"\b\nExample, on the files of cardproof demo:\n{command}"
+
+
 def _version(wanted: bool) -> None:
     if wanted:
         typer.echo(f"cardproof {__version__}")
@@ -74,7 +79,7 @@ def root(
     """
 
 
-@app.command()
+@app.command(epilog=_example("cardproof demo cardproof-demo"))
 def demo(
     folder: Annotated[Path, typer.Argument(metavar="DIR", help="Where the files go.")] = Path("cardproof-demo"),
     json: Json = None,
@@ -86,18 +91,19 @@ def demo(
     raise typer.Exit(run(folder, json_file=json, report=report))
 
 
-@app.command()
+@app.command(epilog=_example("cardproof check cardproof-demo/laboratory.card.toml --report check.html"))
 def check(cards: CardFiles, json: Json = None, report: ReportFile = None) -> None:
-    """Is a card admissible, and does it cover its service window?
-
-    Example: cardproof check cardproof-demo/laboratory.card.toml
-    """
+    """Is a card admissible, and does it cover its service window?"""
     from drivers.commands.check import run
 
     raise typer.Exit(run(cards, json_file=json, report=report))
 
 
-@app.command()
+@app.command(
+    epilog=_example(
+        "cardproof convert cardproof-demo/laboratory.card.toml --to vft --reference 25degC -o new.card.toml"
+    )
+)
 def convert(
     card: CardFile,
     to: Annotated[str, typer.Option("--to", metavar="LAW", help="wlf, vft, arrhenius or table.")],
@@ -123,10 +129,7 @@ def convert(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Write a card with another shift law, reference temperature or unit.
-
-    Example: cardproof convert cardproof-demo/laboratory.card.toml --to vft --reference 25degC -o new.card.toml
-    """
+    """Write a card with another shift law, reference temperature or unit."""
     from drivers.commands.convert import run
 
     raise typer.Exit(
@@ -146,7 +149,11 @@ def convert(
     )
 
 
-@app.command()
+@app.command(
+    epilog=_example(
+        "cardproof drive cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml -o history.csv"
+    )
+)
 def drive(
     card: CardFile,
     path: PathFile,
@@ -175,10 +182,7 @@ def drive(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Stress, strain and temperature along a path.
-
-    Example: cardproof drive cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml
-    """
+    """Stress, strain and temperature along a path."""
     from drivers.commands.drive import run
 
     raise typer.Exit(
@@ -197,7 +201,11 @@ def drive(
     )
 
 
-@app.command()
+@app.command(
+    epilog=_example(
+        "cardproof compare cardproof-demo/laboratory.card.toml cardproof-demo/slip.card.toml --report slip.html"
+    )
+)
 def compare(
     card_a: Annotated[str, typer.Argument(metavar="CARD_A", help="The card that counts as right, or a folder.")],
     card_b: Annotated[str, typer.Argument(metavar="CARD_B", help="The card in question, or a folder.")],
@@ -211,10 +219,7 @@ def compare(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Do two cards say the same thing?
-
-    Example: cardproof compare cardproof-demo/laboratory.card.toml cardproof-demo/slip.card.toml
-    """
+    """Do two cards say the same thing?"""
     from drivers.commands import either
 
     raise typer.Exit(
@@ -222,7 +227,11 @@ def compare(
     )
 
 
-@app.command()
+@app.command(
+    epilog=_example(
+        "cardproof steps cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml --tolerance 1%"
+    )
+)
 def steps(
     card: CardFile,
     path: PathFile,
@@ -237,10 +246,7 @@ def steps(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """How small must the increments of a path be, by update rule?
-
-    Example: cardproof steps cardproof-demo/laboratory.card.toml cardproof-demo/thermal-cycles.path.toml --tolerance 1%
-    """
+    """How small must the increments of a path be, by update rule?"""
     from drivers.commands.steps import run
 
     raise typer.Exit(
@@ -257,7 +263,7 @@ def steps(
     )
 
 
-@app.command()
+@app.command(epilog=_example("cardproof record cardproof-demo/laboratory.card.toml -o laboratory.baseline.json"))
 def record(
     card: CardFile,
     path: Annotated[
@@ -273,10 +279,7 @@ def record(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Store the behaviour of a card as accepted.
-
-    Example: cardproof record cardproof-demo/laboratory.card.toml -o cardproof-demo/laboratory.baseline.json
-    """
+    """Store the behaviour of a card as accepted."""
     from drivers.commands.record import run
 
     raise typer.Exit(
@@ -284,7 +287,7 @@ def record(
     )
 
 
-@app.command()
+@app.command(epilog=_example("cardproof verify cardproof-demo/slip.card.toml cardproof-demo/laboratory.baseline.json"))
 def verify(
     card: Annotated[str, typer.Argument(metavar="CARD", help="A card file, *.card.toml, or a folder of them.")],
     baseline: Annotated[
@@ -299,10 +302,7 @@ def verify(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Does a card still behave as accepted, and if not, what moved?
-
-    Example: cardproof verify cardproof-demo/slip.card.toml cardproof-demo/laboratory.baseline.json
-    """
+    """Does a card still behave as accepted, and if not, what moved?"""
     from drivers.commands import either
 
     raise typer.Exit(
@@ -312,7 +312,7 @@ def verify(
     )
 
 
-@app.command()
+@app.command(epilog=_example("cardproof audit cardproof-demo/python.routine.toml --quick"))
 def audit(
     routine: Annotated[str | None, typer.Argument(metavar="ROUTINE", help="A routine file, *.routine.toml.")] = None,
     card: Annotated[
@@ -326,10 +326,7 @@ def audit(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Is a stress-update routine right?
-
-    Example: cardproof audit mine.routine.toml --card cardproof-demo/laboratory.card.toml
-    """
+    """Is a stress-update routine right?"""
     from drivers.commands.audit import run_either
 
     raise typer.Exit(
@@ -337,7 +334,7 @@ def audit(
     )
 
 
-@app.command()
+@app.command(epilog=_example("cardproof sweep cardproof-demo/library.sweep.toml --csv results.csv"))
 def sweep(
     file: Annotated[str, typer.Argument(metavar="SWEEP", help="A sweep file, *.sweep.toml.")],
     processes: Annotated[
@@ -353,10 +350,7 @@ def sweep(
     json: Json = None,
     report: ReportFile = None,
 ) -> None:
-    """Many cards, paths, rules and sampled constants; stopped or killed, it goes on where it was.
-
-    Example: cardproof sweep library.sweep.toml --csv results.csv
-    """
+    """Many cards, paths, rules and sampled constants; stopped or killed, it goes on where it was."""
     from drivers.commands.sweep import run
 
     raise typer.Exit(
@@ -405,8 +399,10 @@ def main(arguments: list[str] | None = None) -> int:
         return _refused(error.lines())
     except (KeyboardInterrupt, typer.Abort):
         return _refused(["cardproof: interrupted"], INTERRUPTED)
-    except SystemExit:  # never for the usage, which is an exception here: what is below us leaves so on a broken pipe
-        return 141
+    except (
+        SystemExit
+    ) as leaving:  # never for the usage, which is an exception here: completion shown; else a broken pipe
+        return 141 if leaving.code else 0
     except OSError as error:
         _silence()
         return _refused([f"cardproof: standard output: {error.strerror or error}"])
