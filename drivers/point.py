@@ -14,7 +14,7 @@ from matlib.errors import CardproofError, ParameterError
 from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Routine
 from matlib.tensors import stress_from_mandel
 
-__all__ = ["ControlError", "ResponseError", "drive", "march", "take_stepwise"]
+__all__ = ["ControlError", "ResponseError", "drive", "kept_rows", "march", "take_stepwise"]
 
 NEWTON_LIMIT = 25
 NEWTON_TOLERANCE = 1e-12
@@ -156,7 +156,9 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
             if wrong.any():
                 raise ResponseError(label, float(block.time[int(wrong.argmax())]))
             T = block.temperature
-            dxi = routine.reduced_time(block.duration, T[:-1], T[1:])
+            dxi = response.reduced_time
+            if dxi is None:
+                dxi = routine.reduced_time(block.duration, T[:-1], T[1:])
             clock = None if dxi is None else xi + np.cumsum(dxi)
             done += block.duration.size
             yield _Rows(
@@ -172,13 +174,30 @@ def march(routine: Routine, path: Path, *, stepwise: bool = False) -> Iterator[_
             temperature, time = float(T[-1]), float(block.time_end[-1])
 
 
-def _kept(rows: _Rows, before: int, keep: str | int) -> BoolArray:
-    count = rows.time.size
+def kept_rows(count: int, before: int, keep: str | int, *, ends_segment: bool) -> BoolArray:
+    """Which of `count` increment ends a history keeps.
+
+    Parameters
+    ----------
+    count : int
+        Increments of a block.
+    before : int
+        Increments of the path before it.
+    keep : {"all", "ends"} or int
+        As in `drive`.
+    ends_segment : bool
+        Whether the block is the last of its segment.
+
+    Examples
+    --------
+    >>> kept_rows(4, 1, 3, ends_segment=True).tolist()
+    [False, True, False, True]
+    """
     if keep == "all":
         return np.ones(count, dtype=np.bool_)
     number = before + np.arange(1, count + 1)
     mask = number % keep == 0 if isinstance(keep, int) else np.zeros(count, dtype=np.bool_)
-    mask[-1] |= rows.ends_segment
+    mask[-1] |= ends_segment
     return mask
 
 
@@ -226,7 +245,7 @@ def drive(
     strains, stresses = [np.zeros((1, 6))], [np.zeros((1, 6))]
     ends = [np.ones(1, dtype=np.bool_)]
     for rows in march(routine, path, stepwise=stepwise):
-        mask = _kept(rows, before, keep)
+        mask = kept_rows(rows.time.size, before, keep, ends_segment=rows.ends_segment)
         before += mask.size
         last = np.zeros(mask.size, dtype=np.bool_)
         last[-1] = rows.ends_segment

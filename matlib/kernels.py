@@ -8,24 +8,25 @@ takes out of a tuple, which costs more than the arithmetic of a short chunk.
 
 from __future__ import annotations
 
-import numba
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 
+from matlib import packing, term_kernels, weight_kernels
 from matlib.arrays import BoolArray, FloatArray
+from matlib.compiling import kept, plain, source_stamp
 from matlib.packing import GIVEN, TILE, Form, State, Terms
 from matlib.term_kernels import ROW, carry_and_look, carry_mean, carry_pairs, forget, look_mean, stiffness
 from matlib.weight_kernels import weigh
 
-__all__ = ["run_block"]
+__all__ = ["run_members"]
 
 CHUNK = 64
 """Increments, an even number, whose weights are held at a time; they fit the innermost cache."""
 
 THIRD = 1.0 / 3.0
 IntArray = NDArray[np.int64]
-
-plain = numba.njit(cache=True, error_model="numpy", nogil=True)
 
 
 @plain
@@ -81,7 +82,6 @@ def _follow_strains(
     h: FloatArray,
     p: FloatArray,
     e: FloatArray,
-    rest: FloatArray,
     stress_out: FloatArray,
 ) -> None:
     """Take a chunk of increments whose strains are all given: what does not relax first, then the terms in pairs."""
@@ -107,18 +107,10 @@ def _follow_strains(
         s0, s1, s2, s3, s4, s5 = t0, t1, t2, t3, t4, t5
     strain[0], strain[1], strain[2], strain[3], strain[4], strain[5] = s0, s1, s2, s3, s4, s5
     theta[0] = volume_strain
-    if shear_count == 0:
-        return
-    carry_pairs(h, shear_count, shear_weights, pairs, count // 2, e, first, stress_out)
     if count % 2 == 1:
-        last = count - 1
-        pairs[0] = pairs[last // 2]
         for c in range(6):
-            e[0, c], e[1, c] = e[last, c], 0.0
-            rest[0, c] = 0.0
-        carry_pairs(h, shear_count, shear_weights, pairs, 1, e, 0, rest)
-        for c in range(6):
-            stress_out[first + last, c] += rest[0, c]
+            e[count, c] = 0.0
+    carry_pairs(h, shear_count, shear_weights, pairs, (count + 1) // 2, e, first, stress_out)
 
 
 @plain
@@ -180,12 +172,14 @@ def _follow_mixed(
 ) -> None:
     """Take a chunk of increments some of whose stresses are given: what the next one keeps is summed on the way."""
     step, kept, e = room[0], room[1], room[2]
-    row = CHUNK  # of an increment of nothing
+    row = nothing = 2 * pairs.size  # of an increment of nothing
     e[:] = 0.0
-    for a in range(count):
-        k, next_row = first + a, _row(pairs, a)
+    for a in range(count + 1):
+        next_row = _row(pairs, a) if a < count else nothing
         carry_and_look(h, shear_count, shear_weights, row, next_row, e, kept)
-        row = next_row
+        if a == count:
+            break
+        k, row = first + a, next_row
         mu2 = stiffness(G2, shear_count, shear_weights, row)
         tangent, pressure = K, K * theta[0]
         if bulk_count > 0:
@@ -206,64 +200,98 @@ def _follow_mixed(
             stress_out[k, c] = kept[c] + mu2 * e[c] + (tangent * volume if c < 3 else 0.0)
             strain[c] = strain[c] + step[c] if stress_controlled[c] else targets[k, c]
             strain_out[k, c] = strain[c]
-    carry_and_look(h, shear_count, shear_weights, row, CHUNK, e, kept)
 
 
 @plain
-def _run(
+def _take_weights(
     kind: int,
     A: float,
     B: float,
-    dxi: FloatArray,
-    targets: FloatArray,
-    stress_controlled: BoolArray,
-    thermal: FloatArray,
-    G2: float,
+    values: FloatArray,
+    found: int,
+    first: int,
+    count: int,
     shear_terms: FloatArray,
     shear_count: int,
     shear_given: FloatArray,
-    K: float,
+    shear_weights: FloatArray,
     bulk_terms: FloatArray,
     bulk_count: int,
     bulk_given: FloatArray,
-    strain: FloatArray,
-    theta: FloatArray,
-    h: FloatArray,
-    p: FloatArray,
-    strain_out: FloatArray,
-    stress_out: FloatArray,
+    bulk_weights: FloatArray,
 ) -> None:
-    """`run_block` with its tuples taken apart: what is compiled and kept on disk knows no class of ours, which may change."""
-    shear_weights = np.zeros((h.shape[0], (CHUNK + 1) * ROW))  # the last row stays that of an increment of nothing
-    bulk_weights = np.zeros((p.shape[0], (CHUNK + 1) * ROW))
-    shear_weights[:, CHUNK * ROW : CHUNK * ROW + TILE] = 1.0
-    pairs, values = np.zeros(CHUNK // 2, dtype=np.int64), np.zeros(CHUNK)
-    e, rest = np.zeros((CHUNK, 6)), np.zeros((2, 6))
-    mixed = stress_controlled.any()
-    for first in range(0, dxi.size, CHUNK):
-        count = min(CHUNK, dxi.size - first)
-        found = _distinct(kind == GIVEN, dxi, first, count, pairs, values)
+    """Weights of a chunk, shear and bulk in turn (a loop, and so compiled once)."""
+    terms, width, given, weights = shear_terms, shear_count, shear_given, shear_weights
+    for _ in range(2):
         if kind == GIVEN:
-            _take_given(shear_given, first, count, shear_weights)
-            _take_given(bulk_given, first, count, bulk_weights)
+            _take_given(given, first, count, weights)
         else:
-            weigh(kind, A, B, values, found, shear_terms, shear_count, shear_weights)
-            weigh(kind, A, B, values, found, bulk_terms, bulk_count, bulk_weights)
-        if mixed:
-            _follow_mixed(
-                first, count, targets, stress_controlled, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count,
-                bulk_weights, strain, theta, h, p, e, strain_out, stress_out,
-            )  # fmt: skip
-        else:
-            _follow_strains(
-                first, count, targets, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count, bulk_weights,
-                strain, theta, h, p, e, rest, stress_out,
-            )  # fmt: skip
-        forget(h)
-        forget(p)
+            weigh(kind, A, B, values, found, terms, width, weights)
+        terms, width, given, weights = bulk_terms, bulk_count, bulk_given, bulk_weights
 
 
-def run_block(
+def _compiled(stamp: int) -> Callable[..., None]:
+    """`run_members` with its tuples taken apart: what is kept on disk knows no class of ours, which may change."""
+
+    @kept
+    def run(
+        kind: int,
+        A: float,
+        B: float,
+        dxi: FloatArray,
+        targets: FloatArray,
+        stress_controlled: BoolArray,
+        thermal: FloatArray,
+        G2: FloatArray,
+        shear_terms: FloatArray,
+        shear_count: int,
+        shear_given: FloatArray,
+        K: FloatArray,
+        bulk_terms: FloatArray,
+        bulk_count: int,
+        bulk_given: FloatArray,
+        strain: FloatArray,
+        theta: FloatArray,
+        h: FloatArray,
+        p: FloatArray,
+        strain_out: FloatArray,
+        stress_out: FloatArray,
+    ) -> None:
+        shear_weights = np.zeros((h.shape[1], (CHUNK + 1) * ROW))  # the last row stays that of an increment of nothing
+        bulk_weights = np.zeros((p.shape[1], (CHUNK + 1) * ROW))
+        shear_weights[:, CHUNK * ROW : CHUNK * ROW + TILE] = 1.0
+        pairs, values = np.zeros(CHUNK // 2, dtype=np.int64), np.zeros(CHUNK)
+        e = np.zeros((CHUNK, 6))
+        mixed = stress_controlled.any()
+        for j in range(dxi.shape[0] if stamp >= 0 else 0):  # a stamp never is below 0
+            to, own = targets[min(j, targets.shape[0] - 1)], dxi[j]
+            for first in range(0, own.size, CHUNK):
+                count = min(CHUNK, own.size - first)
+                found = _distinct(kind == GIVEN, own, first, count, pairs, values)
+                _take_weights(
+                    kind, A, B, values, found, first, count, shear_terms[j], shear_count, shear_given[j], shear_weights,
+                    bulk_terms[j], bulk_count, bulk_given[j], bulk_weights,
+                )  # fmt: skip
+                if mixed:
+                    _follow_mixed(
+                        first, count, to, stress_controlled, thermal[j], pairs, G2[j], shear_count, shear_weights, K[j],
+                        bulk_count, bulk_weights, strain[j], theta[j], h[j], p[j], e, strain_out[j], stress_out[j],
+                    )  # fmt: skip
+                else:
+                    _follow_strains(
+                        first, count, to, thermal[j], pairs, G2[j], shear_count, shear_weights, K[j], bulk_count,
+                        bulk_weights, strain[j], theta[j], h[j], p[j], e, stress_out[j],
+                    )  # fmt: skip
+                forget(h[j])
+                forget(p[j])
+
+    return run
+
+
+_run = _compiled(source_stamp(__file__, packing.__file__, term_kernels.__file__, weight_kernels.__file__))
+
+
+def run_members(
     form: Form,
     dxi: FloatArray,
     targets: FloatArray,
@@ -275,45 +303,25 @@ def run_block(
     strain_out: FloatArray,
     stress_out: FloatArray,
 ) -> None:
-    r"""Carry the state over the increments of a block, in place, and write both histories.
+    r"""Carry each member over the increments of a block, in place, and write the histories; the interpreter lock is free.
 
     Parameters
     ----------
     form : Form
         Of the recursion.
-    dxi : (n,)
+    dxi : (members, n)
         Reduced times [s], finite and ``>= 0``.
-    targets : (n, 6)
+    targets : (members or 1, n, 6)
         End values of each component: stress where `stress_controlled`, strain elsewhere (Mandel).
     stress_controlled : (6,) bool
-    thermal : (n,)
+    thermal : (members, n)
         Increments of the thermal volume strain, :math:`3 \alpha \Delta T`.
     shear, bulk : Terms
         :math:`2 G` and :math:`K`.
     state : State
-    strain_out, stress_out : (n, 6)
-        Where all strains are given `strain_out` is left alone: it would repeat `targets`.
+    strain_out : (members, n, 6)
+        Left alone where all strains are given: it would repeat `targets`.
+    stress_out : (members, n or n + 1, 6)
+        An even number of rows; what fills them up is of no meaning.
     """
-    _run(
-        form.kind,
-        form.a,
-        form.b,
-        dxi,
-        targets,
-        stress_controlled,
-        thermal,
-        shear.equilibrium,
-        shear.packed,
-        shear.width,
-        shear.given,
-        bulk.equilibrium,
-        bulk.packed,
-        bulk.width,
-        bulk.given,
-        state.strain,
-        state.theta,
-        state.h,
-        state.p,
-        strain_out,
-        stress_out,
-    )
+    _run(*form, dxi, targets, stress_controlled, thermal, *shear, *bulk, *state, strain_out, stress_out)

@@ -1,7 +1,11 @@
-r"""What the compiled kernels take: series in tiles of terms, the state of a point, the form of a recursion."""
+r"""What the compiled kernels take: series in tiles of terms, the state of a point, the form of a recursion.
+
+The first axis of every array is that of the members of an ensemble; a single material has one.
+"""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Literal, NamedTuple
 
 import numpy as np
@@ -9,7 +13,19 @@ import numpy as np
 from matlib.arrays import FloatArray
 from matlib.prony import PronySeries
 
-__all__ = ["EXPONENTIAL", "GIVEN", "MIDPOINT", "RATIONAL", "TILE", "Form", "State", "Terms", "pack", "pack_weights"]
+__all__ = [
+    "EXPONENTIAL",
+    "GIVEN",
+    "MIDPOINT",
+    "RATIONAL",
+    "TILE",
+    "Form",
+    "State",
+    "Terms",
+    "pack",
+    "pack_weights",
+    "widened",
+]
 
 TILE = 32
 """Terms of one tile. Rows of a tile stand at fixed distances, which lets the compiler make vector instructions of loops."""
@@ -39,6 +55,11 @@ class Form(NamedTuple):
         """The form of that name."""
         return cls(_KINDS[kind], a, b)
 
+    @property
+    def compiled(self) -> bool:
+        """Whether there are compiled functions."""
+        return self.kind != GIVEN
+
 
 AS_GIVEN = Form()
 """The form of a recursion that has no compiled functions of its own."""
@@ -49,16 +70,16 @@ class Terms(NamedTuple):
 
     Parameters
     ----------
-    equilibrium : float
-    packed : ndarray, shape (tiles, 3 * TILE)
+    equilibrium : ndarray, shape (members,)
+    packed : ndarray, shape (members, tiles, 3 * TILE)
         :math:`1/\tau_i`, the modulus, and :math:`\tau_i` times it, each `TILE` long; zeros where there is no term.
     width : int
         Terms, rounded up to a multiple of four; those that are not there relax nothing.
-    given : ndarray, shape (n, tiles, 2 * TILE)
+    given : ndarray, shape (members, n, tiles, 2 * TILE)
         Decay, and modulus times gain, of each increment where the form is `GIVEN`; else empty.
     """
 
-    equilibrium: float
+    equilibrium: FloatArray
     packed: FloatArray
     width: int
     given: FloatArray
@@ -69,12 +90,12 @@ class State(NamedTuple):
 
     Parameters
     ----------
-    strain : ndarray, shape (6,)
-    theta : ndarray, shape (1,)
+    strain : ndarray, shape (members, 6)
+    theta : ndarray, shape (members, 1)
         Mechanical volume strain.
-    h : ndarray, shape (tiles, 6 * TILE)
+    h : ndarray, shape (members, tiles, 6 * TILE)
         Relaxing deviatoric stresses, components in turn.
-    p : ndarray, shape (tiles, TILE)
+    p : ndarray, shape (members, tiles, TILE)
         Relaxing mean stresses.
     """
 
@@ -84,15 +105,27 @@ class State(NamedTuple):
     p: FloatArray
 
     @classmethod
+    def at_rest(cls, shear: Terms, bulk: Terms) -> State:
+        """All zero."""
+        members, tiles = shear.packed.shape[:2]
+        h = np.zeros((members, tiles, 6 * TILE))
+        return cls(np.zeros((members, 6)), np.zeros((members, 1)), h, np.zeros((members, bulk.packed.shape[1], TILE)))
+
+    @classmethod
     def unpacked(cls, strain: FloatArray, memory: FloatArray, shear_terms: int, bulk_terms: int) -> State:
-        """From a strain and the memory of a routine, both copied."""
+        """Of a single material, from a strain and the memory of its routine, both copied."""
         p, h = memory[1 : 1 + bulk_terms], memory[1 + bulk_terms :].reshape(6, shear_terms)
-        return cls(strain.copy(), memory[:1].copy(), h=_tiled(h).reshape(-1, 6 * TILE), p=_tiled(p))
+        return cls(
+            strain=strain[np.newaxis].copy(),
+            theta=memory[np.newaxis, :1].copy(),
+            h=_tiled(h).reshape(1, -1, 6 * TILE),
+            p=_tiled(p)[np.newaxis],
+        )
 
     def memory(self, shear_terms: int, bulk_terms: int) -> FloatArray:
-        """The memory of a routine."""
-        h = self.h.reshape(-1, 6, TILE).transpose(1, 0, 2).reshape(6, -1)[:, :shear_terms]
-        return np.concatenate([self.theta, self.p.ravel()[:bulk_terms], h.ravel()])
+        """The memory of the routine of a single material."""
+        h = self.h[0].reshape(-1, 6, TILE).transpose(1, 0, 2).reshape(6, -1)[:, :shear_terms]
+        return np.concatenate([self.theta[0], self.p.ravel()[:bulk_terms], h.ravel()])
 
 
 def _tiled(rows: FloatArray) -> FloatArray:
@@ -114,20 +147,31 @@ def pack(series: PronySeries, factor: float = 1.0) -> Terms:
     Examples
     --------
     >>> terms = pack(PronySeries(equilibrium=1.0, moduli=[2.0], times=[4.0]), factor=2.0)
-    >>> terms.equilibrium, terms.width, terms.packed[0, [0, TILE, 2 * TILE]].tolist()
-    (2.0, 4, [0.25, 4.0, 16.0])
+    >>> terms.equilibrium.tolist(), terms.width, terms.packed[0, 0, [0, TILE, 2 * TILE]].tolist()
+    ([2.0], 4, [0.25, 4.0, 16.0])
     """
     with np.errstate(over="ignore", under="ignore"):
         rates = np.minimum(1.0 / series.times, np.finfo(np.float64).max)
     moduli = factor * series.moduli
-    packed = _tiled(np.stack([rates, moduli, moduli * series.times])).reshape(-1, 3 * TILE)
-    nothing = np.empty((0, packed.shape[0], 2 * TILE))
-    return Terms(factor * series.equilibrium, packed, _count(series.times.size), nothing)
+    packed = _tiled(np.stack([rates, moduli, moduli * series.times])).reshape(1, -1, 3 * TILE)
+    nothing = np.empty((1, 0, packed.shape[1], 2 * TILE))
+    return Terms(np.array([factor * series.equilibrium]), packed, _count(series.times.size), nothing)
 
 
 def pack_weights(terms: Terms, decay: FloatArray, gain: FloatArray) -> Terms:
     """The same terms with decay and gain of each increment, both of shape (n, terms), handed over."""
-    moduli = terms.packed[:, TILE : 2 * TILE].ravel()[: decay.shape[1]]
+    moduli = terms.packed[0, :, TILE : 2 * TILE].ravel()[: decay.shape[1]]
     tiled = _tiled(np.stack([decay, gain * moduli], axis=1))  # (tiles, n, 2, TILE)
-    given = np.ascontiguousarray(np.moveaxis(tiled, 0, 1)).reshape(decay.shape[0], -1, 2 * TILE)
+    given = np.ascontiguousarray(np.moveaxis(tiled, 0, 1)).reshape(1, decay.shape[0], -1, 2 * TILE)
     return terms._replace(given=given)
+
+
+def widened(each: Sequence[Terms]) -> Terms:
+    """Several series side by side, filled up to the longest with terms that are not there."""
+    tiles = max(terms.packed.shape[1] for terms in each)
+    packed = np.zeros((len(each), tiles, 3 * TILE))
+    for row, terms in zip(packed, each, strict=True):
+        row[: terms.packed.shape[1]] = terms.packed[0]
+    nothing = np.empty((len(each), 0, tiles, 2 * TILE))
+    equilibrium = np.concatenate([terms.equilibrium for terms in each])
+    return Terms(equilibrium, packed, max(terms.width for terms in each), nothing)

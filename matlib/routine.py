@@ -111,11 +111,14 @@ class BlockResponse(NamedTuple):
         Mandel form [-], [Pa].
     memory : ndarray, shape (memory_size,)
         What the point remembers at the end.
+    reduced_time : ndarray, shape (n,), or None
+        That of each increment [s at T_ref], where the routine says.
     """
 
     strain: FloatArray
     stress: FloatArray
     memory: FloatArray
+    reduced_time: FloatArray | None = None
 
 
 class BlockRoutine(Routine):

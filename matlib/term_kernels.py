@@ -1,17 +1,16 @@
 r"""Compiled loops over the terms of a series, private to `kernels`: what they carry over increments, tile by tile.
 
 ``h[tile, i + c * TILE]`` is the relaxing stress of term `i` in component `c`; weights lie as `weight_kernels.weigh` leaves
-them: `ROW` numbers an increment of a tile, decay and modulus times gain. Sums over terms may be taken in another order (``reassoc``) and
-products fused (``contract``), nothing else: what is not finite stays so.
+them: `ROW` numbers an increment of a tile, decay and modulus times gain.
 """
 
 from __future__ import annotations
 
-import numba
 import numpy as np
 from numpy.typing import NDArray
 
 from matlib.arrays import FloatArray
+from matlib.compiling import summing
 from matlib.packing import TILE
 
 __all__ = ["ROW", "carry_and_look", "carry_mean", "carry_pairs", "forget", "look_mean", "stiffness"]
@@ -23,8 +22,6 @@ ROW = 2 * TILE
 """Weights of one increment in a tile."""
 
 T1, T2, T3, T4, T5 = TILE, 2 * TILE, 3 * TILE, 4 * TILE, 5 * TILE
-
-summing = numba.njit(cache=True, error_model="numpy", nogil=True, fastmath={"contract", "reassoc"})
 
 
 @summing

@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
-from matlib.packing import GIVEN, State, pack, pack_weights
+from matlib.packing import State, pack, pack_weights
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS, Recursion
 from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Update
@@ -128,7 +128,8 @@ class LinearViscoelastic(BlockRoutine):
         Where a recursion leaves no stiffness (a liquid, midpoint, an increment of very many relaxation times) and a
         stress is to be followed all the same, the response is not finite.
         """
-        from matlib.kernels import run_block
+        from matlib.compiling import announced
+        from matlib.kernels import run_members
 
         shear, bulk = self.material.shear, self.material.bulk
         T, n = block.temperature, block.duration.size
@@ -139,25 +140,25 @@ class LinearViscoelastic(BlockRoutine):
         _require_shape("temperature", T, (n + 1,))
         dxi = self.reduced_time(block.duration, T[:-1], T[1:])
         shear_terms, bulk_terms = pack(shear, 2.0), pack(bulk)
-        if self.recursion.form.kind == GIVEN:
+        if not self.recursion.form.compiled:
             shear_terms = pack_weights(shear_terms, *self._weights(shear, dxi))
             bulk_terms = pack_weights(bulk_terms, *self._weights(bulk, dxi))
         state = State.unpacked(strain, memory, shear.times.size, bulk.times.size)
-        strain_out, stress_out = np.array(block.targets), np.empty((n, 6))
-        with np.errstate(over="ignore", under="ignore"):
-            run_block(
+        strain_out, stress_out = np.array(block.targets), np.empty((n + n % 2, 6))
+        with np.errstate(over="ignore", under="ignore"), announced():
+            run_members(
                 self.recursion.form,
-                np.array(dxi),
-                np.array(block.targets),
+                np.array(dxi[np.newaxis]),
+                np.array(block.targets[np.newaxis]),
                 np.array(block.stress_controlled),
-                3.0 * self.material.expansion * np.diff(T),
+                3.0 * self.material.expansion * np.diff(T)[np.newaxis],
                 shear_terms,
                 bulk_terms,
                 state,
-                strain_out,
-                stress_out,
+                strain_out[np.newaxis],
+                stress_out[np.newaxis],
             )
-        return BlockResponse(strain_out, stress_out, state.memory(shear.times.size, bulk.times.size))
+        return BlockResponse(strain_out, stress_out[:n], state.memory(shear.times.size, bulk.times.size), dxi)
 
 
 def _require_shape(name: str, array: NDArray[np.generic], shape: tuple[int, ...]) -> None:

@@ -8,10 +8,10 @@ from __future__ import annotations
 
 import math
 
-import numba
 import numpy as np
 
 from matlib.arrays import FloatArray
+from matlib.compiling import fused
 from matlib.packing import EXPONENTIAL, MIDPOINT, TILE
 
 __all__ = ["weigh"]
@@ -38,10 +38,8 @@ A0, A1, A2, A3, A4, A5, A6, A7, A8, A9 = (
     2.5109217017939995e-08,
 )
 
-plain = numba.njit(cache=True, error_model="numpy", nogil=True, fastmath={"contract"})
 
-
-@plain
+@fused
 def _split(r: float) -> tuple[float, float, float]:
     r"""Power of two `s`, rest `f` and :math:`p = (e^f - 1)/f` with :math:`e^{-r} = s\,e^f`, :math:`|f| \le \ln(2)/2`."""
     r = min(r, LONGEST)
@@ -54,7 +52,7 @@ def _split(r: float) -> tuple[float, float, float]:
     return s, f, p
 
 
-@plain
+@fused
 def _exponential(dxi: FloatArray, rows: int, terms: FloatArray, tile: int, m: int, weights: FloatArray) -> None:
     """exp(-r), and (1 - exp(-r))/r from the same polynomial: without loss at any r, without a division."""
     for row in range(rows):
@@ -71,7 +69,7 @@ def _exponential(dxi: FloatArray, rows: int, terms: FloatArray, tile: int, m: in
             w[i + TILE] = part * (modulus if near else per_dxi * terms[tile, i + 2 * TILE])
 
 
-@plain
+@fused
 def _midpoint(dxi: FloatArray, rows: int, terms: FloatArray, tile: int, m: int, weights: FloatArray) -> None:
     """exp(-r/2) and its square."""
     for row in range(rows):
@@ -84,7 +82,7 @@ def _midpoint(dxi: FloatArray, rows: int, terms: FloatArray, tile: int, m: int, 
             w[i + TILE] = terms[tile, i + TILE] * half
 
 
-@plain
+@fused
 def _rational(
     a: float, b: float, dxi: FloatArray, rows: int, terms: FloatArray, tile: int, m: int, weights: FloatArray
 ) -> None:
@@ -99,7 +97,7 @@ def _rational(
             w[i + TILE] = terms[tile, i + TILE] * gain
 
 
-@plain
+@fused
 def weigh(
     kind: int, a: float, b: float, dxi: FloatArray, rows: int, terms: FloatArray, count: int, weights: FloatArray
 ) -> None:

@@ -14,8 +14,8 @@ LAYERS = [  # from the bottom up; a module imports from lower layers, and from i
     "matlib.units matlib.tensors matlib.documents",
     "matlib.terms matlib.prony matlib.interconversion matlib.elastic matlib.effective matlib.mode_kernels matlib.shift*",
     "matlib.material matlib.packing matlib.recursion matlib.routine",
-    "matlib.kernels matlib.term_kernels matlib.weight_kernels",
-    "matlib.viscoelastic",
+    "matlib.compiling matlib.kernels matlib.term_kernels matlib.weight_kernels",
+    "matlib.viscoelastic matlib.ensemble",
     "matlib.card* matlib.shift_tables matlib.shift_findings matlib.finding matlib.admissibility",
     "drivers drivers.history drivers.path drivers.path_file drivers.record_file",
     "drivers.*",  # the loop, the reference solution, the battery, routines that are not ours

@@ -78,8 +78,12 @@ def _mean_log(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike
 
 
 def _integrated(law: ShiftLaw, dt: ArrayLike, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
-    """The integral itself; exact for a temperature linear in time."""
-    return _reduced(dt, law.mean_rate(T_start, T_end))
+    """The integral itself; exact for a temperature linear in time. Where it never changes, one rate does for all."""
+    start, end = np.asarray(T_start, dtype=np.float64), np.asarray(T_end, dtype=np.float64)
+    if start.size > 1 and end.size and np.all(start == start.flat[0]) and np.all(end == start.flat[0]):
+        rate = law.mean_rate(start.flat[0], start.flat[0])
+        return _reduced(dt, np.broadcast_to(rate, np.broadcast_shapes(start.shape, end.shape)))
+    return _reduced(dt, law.mean_rate(start, end))
 
 
 SHIFT_RULES: dict[str, ShiftRule] = {
