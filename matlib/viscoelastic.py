@@ -10,7 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
-from matlib.packing import State, pack, pack_weights
+from matlib.packing import State, Terms, pack, pack_weights
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS, Recursion
 from matlib.routine import Block, BlockResponse, BlockRoutine, Increment, Update
@@ -60,6 +60,12 @@ class LinearViscoelastic(BlockRoutine):
     material: Material
     recursion: Recursion = field(default_factory=lambda: RECURSIONS["exponential"])
     shift_rule: ShiftRule = field(default_factory=lambda: SHIFT_RULES["integrated"])
+    _shear_terms: Terms = field(init=False, repr=False)
+    _bulk_terms: Terms = field(init=False, repr=False)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "_shear_terms", pack(self.material.shear, 2.0))
+        object.__setattr__(self, "_bulk_terms", pack(self.material.bulk))
 
     @property
     def memory_size(self) -> int:
@@ -139,17 +145,19 @@ class LinearViscoelastic(BlockRoutine):
         _require_shape("targets", block.targets, (n, 6))
         _require_shape("temperature", T, (n + 1,))
         dxi = self.reduced_time(block.duration, T[:-1], T[1:])
-        shear_terms, bulk_terms = pack(shear, 2.0), pack(bulk)
+        shear_terms, bulk_terms = self._shear_terms, self._bulk_terms
         if not self.recursion.form.compiled:
             shear_terms = pack_weights(shear_terms, *self._weights(shear, dxi))
             bulk_terms = pack_weights(bulk_terms, *self._weights(bulk, dxi))
         state = State.unpacked(strain, memory, shear.times.size, bulk.times.size)
-        strain_out, stress_out = np.array(block.targets), np.empty((n + n % 2, 6))
+        targets = np.require(block.targets, np.float64, "CW")
+        strain_out = np.empty((n, 6)) if block.stress_controlled.any() else targets
+        stress_out = np.empty((n + n % 2, 6))
         with np.errstate(over="ignore", under="ignore"), announced():
             run_members(
                 self.recursion.form,
-                np.array(dxi[np.newaxis]),
-                np.array(block.targets[np.newaxis]),
+                np.require(dxi, np.float64, "CW")[np.newaxis],
+                targets[np.newaxis],
                 np.array(block.stress_controlled),
                 3.0 * self.material.expansion * np.diff(T)[np.newaxis],
                 shear_terms,
