@@ -47,7 +47,7 @@ BAND: dict[str, Any] = {"facecolor": "#9ca3af", "alpha": 0.35, "linewidth": 0.0}
 SIZE = (4.8, 3.4)  # inches: letters of 9 points are 9 pixels high where the picture is 380 wide
 LABEL, TICK = 10, 9
 FEW_DECADES = 1.6
-LONGEST = 26
+LONGEST = 30
 """Letters of a name in a picture."""
 
 MOST = 4000

@@ -38,6 +38,7 @@ def library_page(what: str, title: str, entries: Sequence[Entry], pictures: Sequ
         pictures=pictures,
         tables=[*parts.tables, *_findings(entries)],
         origin=origin,
+        tables_first=True,
     )
 
 

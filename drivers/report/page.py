@@ -125,6 +125,8 @@ class Page:
     origin : Origin
     settings : dict of str
         Whatever else reproduces the result.
+    tables_first : bool
+        Whether tables say more than pictures.
     """
 
     title: str
@@ -136,6 +138,7 @@ class Page:
     tables: Sequence[PageTable] = ()
     origin: Origin = field(default_factory=Origin)
     settings: dict[str, str] = field(default_factory=dict)
+    tables_first: bool = False
 
     @property
     def word(self) -> str:

@@ -227,6 +227,12 @@ def test_a_bare_page_has_verdict_caution_and_time():
     assert "<table" not in text
 
 
+def test_a_library_is_summed_up_before_it_is_drawn(page):
+    headings = [text for _, text in Outline(page("check-library")).all("h2")]
+    assert headings == ["What decides it", "Detail", "Pictures", "To make it again"]
+    assert [text for _, text in Outline(page("check")).all("h2")][1:3] == ["Pictures", "Detail"]
+
+
 def test_cells_commands_and_files_are_escaped():
     table = PageTable(caption="<b>", headers=["<i>"], rows=[["<u>"]])
     origin = Origin(command="<s>", inputs=[File(file="<p>", what="<q>", digest="0")])
