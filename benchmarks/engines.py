@@ -160,7 +160,8 @@ def convolution(case: Case) -> Engine:
             r = case.dxi[:, np.newaxis] / shear.times
             gain = -np.expm1(-r) / r * (2.0 * shear.moduli)
             for k in range(case.n):
-                since = np.concatenate([[0.0], np.cumsum(case.dxi[k:0:-1])])  # a difference of ends loses the short ones
+                # summed from here back: a difference of two ends loses the short ones
+                since = np.concatenate([[0.0], np.cumsum(case.dxi[k:0:-1])])
                 modulus = (np.exp(-np.divide.outer(since, shear.times)) * gain[k::-1]).sum(axis=1)
                 stress[k] += modulus @ steps[k::-1]
         return stress

@@ -247,10 +247,14 @@ def drive(
     for rows in march(routine, path, stepwise=stepwise):
         mask = kept_rows(rows.time.size, before, keep, ends_segment=rows.ends_segment)
         before += mask.size
+        peak = max(peak, float(np.abs(stress_from_mandel(rows.response.stress)).max()))
+        if progress is not None:
+            progress(mask.size)
+        if not mask.any():  # empty arrays, one a block, would grow with the path
+            continue
         last = np.zeros(mask.size, dtype=np.bool_)
         last[-1] = rows.ends_segment
         ends.append(last[mask])
-        peak = max(peak, float(np.abs(stress_from_mandel(rows.response.stress)).max()))
         labels += [rows.label] * int(np.count_nonzero(mask))
         times.append(rows.time[mask])
         temperatures.append(rows.temperature[mask])
@@ -260,8 +264,6 @@ def drive(
             clocks.append(rows.reduced_time[mask])
         strains.append(rows.response.strain[mask])
         stresses.append(rows.response.stress[mask])
-        if progress is not None:
-            progress(mask.size)
     return History(
         segment=tuple(labels),
         time=np.concatenate(times),

@@ -54,7 +54,7 @@ class ContradictionError(ValueError):
 class Document(BaseModel):
     """Base of all checked file contents: no unknown keys, no silent conversion, no NaN."""
 
-    model_config = ConfigDict(extra="forbid", strict=True, frozen=True, allow_inf_nan=False)
+    model_config = ConfigDict(extra="forbid", strict=True, frozen=True, allow_inf_nan=False, defer_build=True)
 
 
 def shown(value: object, width: int = 60) -> str:

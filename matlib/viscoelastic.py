@@ -150,13 +150,13 @@ class LinearViscoelastic(BlockRoutine):
             shear_terms = pack_weights(shear_terms, *self._weights(shear, dxi))
             bulk_terms = pack_weights(bulk_terms, *self._weights(bulk, dxi))
         state = State.unpacked(strain, memory, shear.times.size, bulk.times.size)
-        targets = np.require(block.targets, np.float64, "CW")
+        targets = np.require(block.targets, np.float64, ["C", "W"])
         strain_out = np.empty((n, 6)) if block.stress_controlled.any() else targets
         stress_out = np.empty((n + n % 2, 6))
         with np.errstate(over="ignore", under="ignore"), announced():
             run_members(
                 self.recursion.form,
-                np.require(dxi, np.float64, "CW")[np.newaxis],
+                np.require(dxi, np.float64, ["C", "W"])[np.newaxis],
                 targets[np.newaxis],
                 np.array(block.stress_controlled),
                 3.0 * self.material.expansion * np.diff(T)[np.newaxis],

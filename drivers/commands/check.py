@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from drivers.commands.inputs import read_all
 from drivers.commands.output import deliver, require_folder
 from drivers.commands.reporting import Report, inputs_of, origin_of
 from drivers.library import is_folder
@@ -13,6 +12,7 @@ from drivers.report.data import checks_data
 from drivers.report.tables import findings_table
 from matlib.admissibility import check_card
 from matlib.card import read_card
+from matlib.documents import read_all
 
 if TYPE_CHECKING:
     from drivers.report.page import Page

@@ -4,21 +4,23 @@ from __future__ import annotations
 
 import json
 from collections.abc import Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
-from drivers.difference import Where
-from drivers.history import History
-from drivers.path import Path
-from drivers.reference import Reference
-from drivers.studies.compare import Comparison, PathComparison
-from drivers.studies.slips import Slip
-from drivers.studies.trial import Rule
-from drivers.subject import Subject, short_name
 from matlib.admissibility import Finding, is_admissible
 from matlib.card import Card
-from matlib.card_conversion import ConvertedCard
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
 from matlib.version import __version__
+
+if TYPE_CHECKING:  # a check or a conversion loads no studies
+    from drivers.difference import Where
+    from drivers.history import History
+    from drivers.path import Path
+    from drivers.reference import Reference
+    from drivers.studies.compare import Comparison, PathComparison
+    from drivers.studies.slips import Slip
+    from drivers.studies.trial import Rule
+    from drivers.subject import Subject
+    from matlib.card_conversion import ConvertedCard
 
 __all__ = ["checks_data", "comparison_data", "conversion_data", "drive_data", "envelope", "json_text", "place_data"]
 
@@ -68,6 +70,8 @@ def conversion_data(converted: ConvertedCard, file: str) -> dict[str, Any]:
 
 
 def _how_data(how: Rule | Reference) -> dict[str, Any]:
+    from drivers.studies.trial import Rule
+
     if isinstance(how, Rule):
         return {"exact": False, "shift_rule": how.shift_rule, "recursion": how.recursion}
     return {"exact": True, "reference": {"relative_bound": how.relative_bound, "estimated": how.estimated}}
@@ -141,6 +145,8 @@ def subject_data(subject: Subject) -> dict[str, Any]:
 
 def comparison_data(comparison: Comparison, a: Subject, b: Subject, slips: Sequence[Slip] = ()) -> dict[str, Any]:
     """Verdict of a comparison of two cards or routines, and the slips that explain a difference of cards."""
+    from drivers.subject import short_name
+
     shift = comparison.shift
     return envelope(
         "compare",

@@ -3,21 +3,25 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
+from typing import TYPE_CHECKING
 
-from rich.console import RenderableType
 from rich.table import Table
 from rich.text import Text
 
-from drivers.difference import Where
-from drivers.history import History
-from drivers.studies.compare import Comparison, PathComparison
-from drivers.studies.slips import Slip
-from drivers.subject import Subject
 from matlib.admissibility import Finding, is_admissible
-from matlib.card import Card
-from matlib.card_conversion import ConvertedCard
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
 from matlib.units import TIME, Unit
+
+if TYPE_CHECKING:
+    from rich.console import RenderableType
+
+    from drivers.difference import Where
+    from drivers.history import History
+    from drivers.studies.compare import Comparison, PathComparison
+    from drivers.studies.slips import Slip
+    from drivers.subject import Subject
+    from matlib.card import Card
+    from matlib.card_conversion import ConvertedCard
 
 __all__ = [
     "CAUTION",
