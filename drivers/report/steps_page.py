@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from drivers.report.axes import label_lines, small_figure
 from drivers.report.page import Fact, Origin, Page, Picture, picture
 from drivers.report.parts import parts_of
@@ -38,9 +40,15 @@ def steps_page(result: StepsResult, subject: Subject, origin: Origin) -> Page:
 
 def _facts(result: StepsResult, subject: Subject) -> list[Fact]:
     own = result.own
-    at = f"in {own.component} at {place_text(own.at, subject.temperature_unit)}; tolerance {percent(result.tolerance)}"
+    finite = own.relative < math.inf
+    at = place_text(own.at, subject.temperature_unit)
+    place = f"in {own.component} at {at}" if finite else f"in segment {own.at.segment}"
     facts = [
-        Fact(label="Error of the path's own increments", value=percent(own.relative), against=at),
+        Fact(
+            label="Error of the path's own increments",
+            value=percent(own.relative) if finite else "no finite response",
+            against=f"{place}; tolerance {percent(result.tolerance)}",
+        ),
         Fact(label="Own increments", value=str(result.path.increment_count), against=str(result.rule)),
     ]
     if result.recommended is not None:
@@ -53,20 +61,24 @@ def _facts(result: StepsResult, subject: Subject) -> list[Fact]:
 
 
 def _pictures(result: StepsResult, subject: Subject) -> list[Picture]:
-    figure, axes = small_figure()
-    draw_course(axes, result)
-    label_lines(figure, 2)
-    own = result.own
-    finding = f"Largest, {percent(own.relative)}, at {place_text(own.at, subject.temperature_unit)}."
-    if result.blame is not None:
-        finding += f" Segment {result.blame.segment} (grey) makes most of it."
-    pictures = [picture(figure, "Error of the own increments over the path", finding)]
+    pictures = [_course(result, subject)] if result.own.relative < math.inf else []
     recursions = list(dict.fromkeys([result.rule.recursion, *(rule.rule.recursion for rule in result.rules)]))
     for recursion in recursions:
         rules = [rule for rule in result.rules if rule.rule.recursion == recursion]
         if rules:
             pictures.append(_ladder(result, recursion, rules))
     return pictures
+
+
+def _course(result: StepsResult, subject: Subject) -> Picture:
+    figure, axes = small_figure()
+    draw_course(axes, result)
+    label_lines(figure, 2)
+    own, blame = result.own, result.blame
+    finding = f"Largest, {percent(own.relative)}, at {place_text(own.at, subject.temperature_unit)}."
+    if blame is not None:
+        finding += f" Segment {blame.segment} (grey) makes {'most' if blame.most else 'the largest part'} of it."
+    return picture(figure, "Error of the own increments over the path", finding)
 
 
 def _ladder(result: StepsResult, recursion: str, rules: list[RuleResult]) -> Picture:

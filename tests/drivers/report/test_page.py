@@ -5,6 +5,7 @@ import dataclasses
 import hashlib
 import itertools
 import json
+import math
 import re
 import shlex
 from datetime import UTC, datetime
@@ -18,8 +19,12 @@ from matplotlib.figure import Figure
 from drivers.cli import main
 from drivers.report.axes import draw_line, small_figure
 from drivers.report.page import File, Origin, Page, PageTable, html, picture
+from drivers.report.steps_page import steps_page
+from drivers.studies.steps import Rule, steps
+from matlib.card import read_card
 from matlib.version import __version__
 from tests.drivers.report.conftest import COMMANDS, HOSTILE
+from tests.drivers.studies.step_cases import path_of, segment
 
 VOID = {"meta", "img", "br", "link", "input", "hr"}
 INPUTS = {
@@ -231,6 +236,19 @@ def test_a_library_is_summed_up_before_it_is_drawn(page):
     headings = [text for _, text in Outline(page("check-library")).all("h2")]
     assert headings == ["What decides it", "Detail", "Pictures", "To make it again"]
     assert [text for _, text in Outline(page("check")).all("h2")][1:3] == ["Pictures", "Detail"]
+
+
+def test_increments_without_a_finite_response_are_told_in_words(pages):
+    rule = Rule(shift_rule="integrated", recursion="exponential")
+    card = read_card(str(pages["steps"].parent / "a.card.toml"))
+    pull = segment("uniaxial strain", durations=[60.0], temperatures=[350.0])
+    found = steps(card.material(), path_of(pull), tolerance=1e-2, rule=rule, rules=[rule])
+    own = dataclasses.replace(found.own, value=math.inf, relative=math.inf)
+    lost = steps_page(dataclasses.replace(found, own=own, blame=None), card, Origin(command=""))
+    assert lost.facts[0].value == "no finite response"
+    assert lost.facts[0].against == "in segment pull; tolerance 1 %"
+    assert [p.title for p in lost.pictures] == ["Error against increments, exponential"]
+    assert "inf " not in html(lost)
 
 
 def test_cells_commands_and_files_are_escaped():
