@@ -19,11 +19,8 @@ from matlib.version import __version__
 
 __all__ = ["app", "main"]
 
-app = typer.Typer(
-    rich_markup_mode=None,
-    pretty_exceptions_enable=False,
-    no_args_is_help=False,
-)
+OPTIONS: dict[str, Any] = {"rich_markup_mode": None, "pretty_exceptions_enable": False, "no_args_is_help": False}
+app = typer.Typer(**OPTIONS)
 
 INTERRUPTED = 130
 
@@ -384,8 +381,8 @@ def main(arguments: list[str] | None = None) -> int:
     """
     if isinstance(sys.stdout, io.TextIOWrapper):
         sys.stdout.reconfigure(errors="backslashreplace")  # a name that the terminal cannot spell is no reason to fail
-    command = typer.main.get_command(app)
     given = sys.argv[1:] if arguments is None else arguments
+    command = typer.main.get_command(_asked_for(given))
     try:
         status = command.main(
             given, prog_name="cardproof", standalone_mode=False, obj=shlex.join(["cardproof", *given])
@@ -408,6 +405,16 @@ def main(arguments: list[str] | None = None) -> int:
         return _refused([f"cardproof: standard output: {error.strerror or error}"])
     except MemoryError:
         return _refused(["cardproof: not enough memory; keep fewer rows, or use fewer increments"])
+
+
+def _asked_for(given: list[str]) -> typer.Typer:
+    """The command line with only the command that is named first: making all of them takes a while."""
+    named = [info for info in app.registered_commands if info.callback and given[:1] == [info.callback.__name__]]
+    if not named:
+        return app
+    narrowed = typer.Typer(**OPTIONS)
+    narrowed.registered_callback, narrowed.registered_commands = app.registered_callback, named
+    return narrowed
 
 
 def _silence() -> None:

@@ -14,7 +14,7 @@ from drivers.history import History
 from drivers.path import Path, Segment, segment_blocks
 from drivers.point import ResponseError, kept_rows
 from matlib.arrays import FloatArray
-from matlib.ensemble import Ensemble
+from matlib.ensemble import Ensemble, Room
 from matlib.errors import ParameterError
 from matlib.material import Material
 from matlib.recursion import Recursion
@@ -24,11 +24,16 @@ from matlib.tensors import stress_from_mandel
 
 __all__ = ["EnsembleHistory", "run_ensemble"]
 
-GROUP = 16
-"""Members taken along the path together; bounds memory, with `GROUP_BLOCK`."""
+GROUP = 128
+"""Members taken along the path together at most; bounds memory, with `GROUP_BLOCK`. Many at once keep the interpreter's lock free."""
 
-GROUP_BLOCK = 1024
-"""Increments of a block at most."""
+GROUPS_A_THREAD = 4
+
+GROUP_BLOCK = 512
+"""Increments of a piece of a block; no block has twice as many."""
+
+ABREAST = 16
+"""Rows that are looked through side by side."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -131,10 +136,15 @@ def run_ensemble(
         raise ParameterError("threads", ">= 1", threads)
     if not materials:
         raise ParameterError("materials", "at least one", "none")
-    firsts = range(0, len(materials), GROUP)
-    groups = [Ensemble(materials[k : k + GROUP], recursion=recursion, shift_rule=shift_rule) for k in firsts]
-    with ThreadPoolExecutor(max_workers=threads or _processors()) as pool:
-        taken = list(pool.map(lambda k, group: list(_march(group, path, keep, k)), firsts, groups))
+    threads = threads or _processors()
+    size = min(GROUP, -(-len(materials) // (GROUPS_A_THREAD * threads)))
+
+    def take(first: int) -> list[_Rows]:
+        group = Ensemble(materials[first : first + size], recursion=recursion, shift_rule=shift_rule)
+        return list(_march(group, path, keep, first))
+
+    with ThreadPoolExecutor(max_workers=threads) as pool:
+        taken = list(pool.map(take, range(0, len(materials), size)))
     common = taken[0]
 
     def joined(name: str) -> FloatArray:
@@ -162,7 +172,7 @@ def _march(group: Ensemble, path: Path, keep: str | int, first: int) -> Iterator
     members, state = len(group), group.start()
     strain, stress, xi = np.zeros((members, 6)), np.zeros((members, 6)), np.zeros((members, 1))
     time, temperature, before = 0.0, path.start_temperature, 0
-    zeros = np.zeros((members, 1, 6))
+    zeros, room = np.zeros((members, 1, 6)), Room.of(members, 2 * GROUP_BLOCK)
     yield _Rows(
         label="start",
         time=np.zeros(1),
@@ -180,8 +190,11 @@ def _march(group: Ensemble, path: Path, keep: str | int, first: int) -> Iterator
             done += block.duration.size
             T = block.temperature
             dxi = group.reduced_time(block.duration, T[:-1], T[1:])
-            strains, stresses = group.run(dxi, T, targets, block.stress_controlled, state)
-            _require_finite(label, block, strains, stresses, first)
+            strains, stresses = group.run(dxi, T, targets, block.stress_controlled, state, room)
+            peak = _largest(stresses)
+            # a strain that is not finite stays so, and no stress on the way was finite
+            if not (np.isfinite(peak).all() and np.isfinite(strains[:, -1]).all()):
+                _require_finite(label, block, strains, stresses, first)
             last = done == segment.increment_count
             mask = kept_rows(block.duration.size, before, keep, ends_segment=last)
             before += mask.size
@@ -196,9 +209,9 @@ def _march(group: Ensemble, path: Path, keep: str | int, first: int) -> Iterator
                 reduced_time=clock[:, mask],
                 strain=strains[:, mask],
                 stress=stresses[:, mask],
-                peak=np.abs(stress_from_mandel(stresses)).max(axis=(1, 2)),
+                peak=stress_from_mandel(peak).max(axis=1),
             )
-            strain, stress, xi = strains[:, -1], stresses[:, -1], clock[:, -1:]
+            strain, stress, xi = strains[:, -1].copy(), stresses[:, -1].copy(), clock[:, -1:]
             temperature, time = float(T[-1]), float(block.time_end[-1])
 
 
@@ -218,6 +231,15 @@ def _blocks(
     for block, other in zip(nothing, one, strict=True):
         part = other.targets - block.targets
         yield block, block.targets + part * values[:, np.newaxis, :]
+
+
+def _largest(stresses: FloatArray) -> FloatArray:
+    """Largest magnitude of each member and component, shape (members, 6); many rows at a time, which is faster."""
+    members, n, _ = stresses.shape
+    whole = n // ABREAST * ABREAST
+    parts = stresses[:, :whole].reshape(members, -1, 6 * ABREAST), stresses[:, whole:]
+    largest = [np.maximum(part.max(axis=1, initial=0.0), -part.min(axis=1, initial=0.0)) for part in parts]
+    return np.maximum(largest[0].reshape(members, ABREAST, 6).max(axis=1), largest[1])
 
 
 def _require_finite(label: str, block: Block, strain: FloatArray, stress: FloatArray, first: int) -> None:

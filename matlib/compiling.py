@@ -11,14 +11,18 @@ from typing import Any
 
 import numba
 from numba.core import event
+from numba.core.options import DefaultOptions
 
 __all__ = ["announced", "fused", "kept", "plain", "source_stamp", "summing"]
 
-plain = numba.njit(error_model="numpy", nogil=True)
-fused = numba.njit(error_model="numpy", nogil=True, fastmath={"contract"})
+# They make no arrays, and so need not count who holds one; what is counted costs more than the arithmetic of a short chunk.
+_UNCOUNTED: dict[str, Any] = {"_nrt": False} if hasattr(DefaultOptions, "_nrt") else {}
+
+plain = numba.njit(error_model="numpy", nogil=True, **_UNCOUNTED)
+fused = numba.njit(error_model="numpy", nogil=True, fastmath={"contract"}, **_UNCOUNTED)
 """Products may be fused with sums."""
 
-summing = numba.njit(error_model="numpy", nogil=True, fastmath={"contract", "reassoc"})
+summing = numba.njit(error_model="numpy", nogil=True, fastmath={"contract", "reassoc"}, **_UNCOUNTED)
 """Sums may be taken in another order as well, nothing else: what is not finite stays so."""
 
 kept = numba.njit(error_model="numpy", nogil=True, cache=True)

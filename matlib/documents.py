@@ -3,10 +3,8 @@
 from __future__ import annotations
 
 import contextlib
-import difflib
 import os
 import stat
-import tempfile
 import tomllib
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -152,6 +150,8 @@ def _expected(error: ErrorDetails, model: type[BaseModel]) -> tuple[str, str]:
     if kind == "extra_forbidden":
         known = sorted(_fields(error["loc"][:-1], model))
         by_case = {name.casefold(): name for name in known}
+        import difflib
+
         close = difflib.get_close_matches(str(error["loc"][-1]).casefold(), by_case, n=1)
         hint = f"write {by_case[close[0]]!r}" if close else "remove the key"
         return "one of the keys " + ", ".join(known), hint
@@ -263,6 +263,8 @@ def write_atomically(file: str | Path, content: str | bytes) -> None:
 
 
 def _replace(path: Path, data: bytes) -> None:
+    import tempfile
+
     handle, temporary = tempfile.mkstemp(dir=path.parent, prefix=f".{path.name}.", suffix=".part")
     try:
         with os.fdopen(handle, "wb") as stream:

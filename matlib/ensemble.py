@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -11,12 +12,35 @@ from numpy.typing import ArrayLike
 from matlib.arrays import BoolArray, FloatArray
 from matlib.errors import ParameterError
 from matlib.material import Material
-from matlib.packing import State, Terms, pack, widened
+from matlib.packing import State, Terms, pack_members
 from matlib.recursion import Recursion, find_recursion
-from matlib.shift.base import ShiftLaw
+from matlib.shift.family_ramp import integrated_by_law
 from matlib.shift.reduced_time import ShiftRule, find_shift_rule
 
-__all__ = ["Ensemble"]
+__all__ = ["Ensemble", "Room"]
+
+
+class Room(NamedTuple):
+    """Where responses are written, block after block: fresh memory for each costs more than the arithmetic.
+
+    Parameters
+    ----------
+    strain, stress : ndarray, shape (numbers,)
+    """
+
+    strain: FloatArray
+    stress: FloatArray
+
+    @classmethod
+    def of(cls, members: int, rows: int) -> Room:
+        """For blocks of up to `rows` increments."""
+        return cls(np.empty(members * rows * 6), np.empty(members * (rows + 1) * 6))
+
+    def cut(self, members: int, n: int) -> tuple[FloatArray, FloatArray]:
+        """Strains and stresses of a block, contiguous; an even number of rows of stress."""
+        even = n + n % 2
+        strain, stress = self.strain[: members * n * 6], self.stress[: members * even * 6]
+        return strain.reshape(members, n, 6), stress.reshape(members, even, 6)
 
 
 @dataclass(frozen=True, slots=True, eq=False, init=False)
@@ -60,8 +84,8 @@ class Ensemble:
         put(self, "materials", tuple(materials))
         put(self, "recursion", chosen)
         put(self, "shift_rule", shift_rule or find_shift_rule("integrated"))
-        put(self, "shear", widened([pack(m.shear, 2.0) for m in materials]))
-        put(self, "bulk", widened([pack(m.bulk) for m in materials]))
+        put(self, "shear", pack_members([m.shear for m in materials], 2.0))
+        put(self, "bulk", pack_members([m.bulk for m in materials]))
 
     def __len__(self) -> int:
         return len(self.materials)
@@ -71,18 +95,28 @@ class Ensemble:
         return State.at_rest(self.shear, self.bulk)
 
     def reduced_time(self, duration: FloatArray, T_start: ArrayLike, T_end: ArrayLike) -> FloatArray:
-        """Reduced times of increments, shape (members, n) [s at the T_ref of each]; once for each law that is shared."""
+        """Reduced times of increments, shape (members, n) [s at the T_ref of each]."""
+        laws = [material.shift for material in self.materials]
+        if self.shift_rule is find_shift_rule("integrated"):
+            at_once = integrated_by_law(laws, duration, np.asarray(T_start), np.asarray(T_end))
+            if at_once is not None:
+                return at_once
         known: dict[int, FloatArray] = {}
         rows = np.empty((len(self), duration.size))
-        for row, material in zip(rows, self.materials, strict=True):
-            law: ShiftLaw = material.shift
+        for row, law in zip(rows, laws, strict=True):
             if id(law) not in known:
                 known[id(law)] = self.shift_rule(law, duration, T_start, T_end)
             row[:] = known[id(law)]
         return rows
 
     def run(
-        self, dxi: FloatArray, temperature: FloatArray, targets: FloatArray, stress_controlled: BoolArray, state: State
+        self,
+        dxi: FloatArray,
+        temperature: FloatArray,
+        targets: FloatArray,
+        stress_controlled: BoolArray,
+        state: State,
+        room: Room | None = None,
     ) -> tuple[FloatArray, FloatArray]:
         """Take every member over the increments; the state is changed in place.
 
@@ -97,6 +131,8 @@ class Ensemble:
         stress_controlled : ndarray of bool, shape (6,)
         state : State
             As from `start`.
+        room : Room, optional
+            Large enough; what is returned lies in it.
 
         Returns
         -------
@@ -108,10 +144,9 @@ class Ensemble:
 
         members, n = dxi.shape
         expansion = np.array([3.0 * m.expansion for m in self.materials])
-        strain = np.empty((members, n, 6))
+        strain, stress = (room or Room.of(members, n)).cut(members, n)
         if not stress_controlled.any():
             strain[:] = targets
-        stress = np.empty((members, n + n % 2, 6))
         with np.errstate(over="ignore", under="ignore"), announced():
             run_members(
                 self.recursion.form,

@@ -2,8 +2,7 @@ r"""Compiled whole-path kernels, private to `viscoelastic`: float64 arrays in, p
 
 Notation as in `recursion`: `h` are the relaxing deviatoric stresses, `p` the relaxing mean stresses, `theta` the mechanical
 volume strain, `e` deviatoric strain increments; ``G2`` and ``K`` are the equilibrium moduli in shear, doubled, and in volume.
-Nothing is checked inside; shapes are the caller's duty. The helpers take plain arrays: numba counts references to what it
-takes out of a tuple, which costs more than the arithmetic of a short chunk.
+Nothing is checked inside; shapes are the caller's duty.
 """
 
 from __future__ import annotations
@@ -16,7 +15,7 @@ from numpy.typing import NDArray
 from matlib import packing, term_kernels, weight_kernels
 from matlib.arrays import BoolArray, FloatArray
 from matlib.compiling import kept, plain, source_stamp
-from matlib.packing import GIVEN, TILE, Form, State, Terms
+from matlib.packing import AWAY_FROM_0, EXPONENTIAL, GIVEN, SMALLEST, TILE, Form, State, Terms
 from matlib.term_kernels import ROW, carry_and_look, carry_mean, carry_pairs, forget, look_mean, stiffness
 from matlib.weight_kernels import weigh
 
@@ -203,31 +202,57 @@ def _follow_mixed(
 
 
 @plain
-def _take_weights(
+def _follow_member(
     kind: int,
     A: float,
     B: float,
-    values: FloatArray,
-    found: int,
-    first: int,
-    count: int,
+    dxi: FloatArray,
+    targets: FloatArray,
+    stress_controlled: BoolArray,
+    thermal: FloatArray,
+    G2: float,
     shear_terms: FloatArray,
     shear_count: int,
     shear_given: FloatArray,
-    shear_weights: FloatArray,
+    K: float,
     bulk_terms: FloatArray,
     bulk_count: int,
     bulk_given: FloatArray,
+    strain: FloatArray,
+    theta: FloatArray,
+    h: FloatArray,
+    p: FloatArray,
+    strain_out: FloatArray,
+    stress_out: FloatArray,
+    shear_weights: FloatArray,
     bulk_weights: FloatArray,
+    pairs: IntArray,
+    values: FloatArray,
+    e: FloatArray,
 ) -> None:
-    """Weights of a chunk, shear and bulk in turn (a loop, and so compiled once)."""
-    terms, width, given, weights = shear_terms, shear_count, shear_given, shear_weights
-    for _ in range(2):
+    """Take one member over all increments, chunk by chunk; the last five arrays are room to work in."""
+    mixed = stress_controlled.any()
+    for first in range(0, dxi.size, CHUNK):
+        count = min(CHUNK, dxi.size - first)
+        found = _distinct(kind == GIVEN, dxi, first, count, pairs, values)
         if kind == GIVEN:
-            _take_given(given, first, count, weights)
+            _take_given(shear_given, first, count, shear_weights)
+            _take_given(bulk_given, first, count, bulk_weights)
         else:
-            weigh(kind, A, B, values, found, terms, width, weights)
-        terms, width, given, weights = bulk_terms, bulk_count, bulk_given, bulk_weights
+            weigh(kind, A, B, values, found, shear_terms, shear_count, shear_weights)
+            weigh(kind, A, B, values, found, bulk_terms, bulk_count, bulk_weights)
+        if mixed:
+            _follow_mixed(
+                first, count, targets, stress_controlled, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count,
+                bulk_weights, strain, theta, h, p, e, strain_out, stress_out,
+            )  # fmt: skip
+        else:
+            _follow_strains(
+                first, count, targets, thermal, pairs, G2, shear_count, shear_weights, K, bulk_count, bulk_weights,
+                strain, theta, h, p, e, stress_out,
+            )  # fmt: skip
+        forget(h)
+        forget(p)
 
 
 def _compiled(stamp: int) -> Callable[..., None]:
@@ -262,28 +287,13 @@ def _compiled(stamp: int) -> Callable[..., None]:
         shear_weights[:, CHUNK * ROW : CHUNK * ROW + TILE] = 1.0
         pairs, values = np.zeros(CHUNK // 2, dtype=np.int64), np.zeros(CHUNK)
         e = np.zeros((CHUNK, 6))
-        mixed = stress_controlled.any()
         for j in range(dxi.shape[0] if stamp >= 0 else 0):  # a stamp never is below 0
-            to, own = targets[min(j, targets.shape[0] - 1)], dxi[j]
-            for first in range(0, own.size, CHUNK):
-                count = min(CHUNK, own.size - first)
-                found = _distinct(kind == GIVEN, own, first, count, pairs, values)
-                _take_weights(
-                    kind, A, B, values, found, first, count, shear_terms[j], shear_count, shear_given[j], shear_weights,
-                    bulk_terms[j], bulk_count, bulk_given[j], bulk_weights,
-                )  # fmt: skip
-                if mixed:
-                    _follow_mixed(
-                        first, count, to, stress_controlled, thermal[j], pairs, G2[j], shear_count, shear_weights, K[j],
-                        bulk_count, bulk_weights, strain[j], theta[j], h[j], p[j], e, strain_out[j], stress_out[j],
-                    )  # fmt: skip
-                else:
-                    _follow_strains(
-                        first, count, to, thermal[j], pairs, G2[j], shear_count, shear_weights, K[j], bulk_count,
-                        bulk_weights, strain[j], theta[j], h[j], p[j], e, stress_out[j],
-                    )  # fmt: skip
-                forget(h[j])
-                forget(p[j])
+            _follow_member(
+                kind, A, B, dxi[j], targets[min(j, targets.shape[0] - 1)], stress_controlled, thermal[j],
+                G2[j], shear_terms[j], shear_count, shear_given[j], K[j], bulk_terms[j], bulk_count, bulk_given[j],
+                strain[j], theta[j], h[j], p[j], strain_out[j], stress_out[j],
+                shear_weights, bulk_weights, pairs, values, e,
+            )  # fmt: skip
 
     return run
 
@@ -324,4 +334,10 @@ def run_members(
     stress_out : (members, n or n + 1, 6)
         An even number of rows; what fills them up is of no meaning.
     """
-    _run(*form, dxi, targets, stress_controlled, thermal, *shear, *bulk, *state, strain_out, stress_out)
+    kind, A, B = form
+    if kind == EXPONENTIAL and float(dxi.min(initial=np.inf)) * min(shear.slowest, bulk.slowest) >= SMALLEST:
+        kind = AWAY_FROM_0
+    _run(
+        kind, A, B, dxi, targets, stress_controlled, thermal, shear.equilibrium, shear.packed, shear.width, shear.given,
+        bulk.equilibrium, bulk.packed, bulk.width, bulk.given, *state, strain_out, stress_out,
+    )  # fmt: skip

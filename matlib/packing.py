@@ -14,23 +14,32 @@ from matlib.arrays import FloatArray
 from matlib.prony import PronySeries
 
 __all__ = [
+    "AWAY_FROM_0",
     "EXPONENTIAL",
+    "FOURS",
     "GIVEN",
     "MIDPOINT",
     "RATIONAL",
+    "SMALLEST",
     "TILE",
     "Form",
     "State",
     "Terms",
     "pack",
+    "pack_members",
     "pack_weights",
-    "widened",
 ]
 
 TILE = 32
 """Terms of one tile. Rows of a tile stand at fixed distances, which lets the compiler make vector instructions of loops."""
 
-GIVEN, EXPONENTIAL, MIDPOINT, RATIONAL = range(4)
+FOURS = -4
+"""``count & FOURS`` is `count`, and tells the compiler that it is a multiple of four: no terms are left over."""
+
+SMALLEST = 1e-200
+"""Where no increment is shorter, in relaxation times, a modulus divided by that is a number."""
+
+GIVEN, EXPONENTIAL, MIDPOINT, RATIONAL, AWAY_FROM_0 = range(5)
 Kind = Literal["exponential", "midpoint", "rational"]
 _KINDS = {"exponential": EXPONENTIAL, "midpoint": MIDPOINT, "rational": RATIONAL}
 
@@ -77,12 +86,15 @@ class Terms(NamedTuple):
         Terms, rounded up to a multiple of four; those that are not there relax nothing.
     given : ndarray, shape (members, n, tiles, 2 * TILE)
         Decay, and modulus times gain, of each increment where the form is `GIVEN`; else empty.
+    slowest : float
+        The least :math:`1/\tau_i` of all members [1/s]; infinite without terms, 0 where a product in `packed` is too large.
     """
 
     equilibrium: FloatArray
     packed: FloatArray
     width: int
     given: FloatArray
+    slowest: float
 
 
 class State(NamedTuple):
@@ -137,10 +149,6 @@ def _tiled(rows: FloatArray) -> FloatArray:
     return np.ascontiguousarray(np.moveaxis(filled.reshape(*rows.shape[:-1], tiles, TILE), -2, 0))
 
 
-def _count(terms: int) -> int:
-    return -(-terms // 4) * 4
-
-
 def pack(series: PronySeries, factor: float = 1.0) -> Terms:
     """A series for the kernels, its moduli times `factor`.
 
@@ -150,12 +158,29 @@ def pack(series: PronySeries, factor: float = 1.0) -> Terms:
     >>> terms.equilibrium.tolist(), terms.width, terms.packed[0, 0, [0, TILE, 2 * TILE]].tolist()
     ([2.0], 4, [0.25, 4.0, 16.0])
     """
-    with np.errstate(over="ignore", under="ignore"):
-        rates = np.minimum(1.0 / series.times, np.finfo(np.float64).max)
-    moduli = factor * series.moduli
-    packed = _tiled(np.stack([rates, moduli, moduli * series.times])).reshape(1, -1, 3 * TILE)
-    nothing = np.empty((1, 0, packed.shape[1], 2 * TILE))
-    return Terms(np.array([factor * series.equilibrium]), packed, _count(series.times.size), nothing)
+    return pack_members([series], factor)
+
+
+def pack_members(each: Sequence[PronySeries], factor: float = 1.0) -> Terms:
+    """Several series side by side, filled up to the longest with terms that are not there."""
+    most = max(series.times.size for series in each)
+    tiles = max(1, -(-most // TILE))
+    times, moduli = np.full((len(each), tiles * TILE), np.inf), np.zeros((len(each), tiles * TILE))
+    for j, series in enumerate(each):
+        times[j, : series.times.size], moduli[j, : series.times.size] = series.times, series.moduli
+    with np.errstate(over="ignore", under="ignore", invalid="ignore"):
+        rates = np.minimum(1.0 / times, np.finfo(np.float64).max)
+        moduli *= factor
+        per_rate = np.where(np.isfinite(times), moduli * times, 0.0)
+    slowest = float(rates.min(where=rates > 0.0, initial=np.inf)) if np.isfinite(per_rate).all() else 0.0
+    rows = np.stack([row.reshape(len(each), tiles, TILE) for row in (rates, moduli, per_rate)], axis=2)
+    return Terms(
+        equilibrium=np.array([factor * series.equilibrium for series in each]),
+        packed=rows.reshape(len(each), tiles, 3 * TILE),
+        width=-(-most // 4) * 4,
+        given=np.empty((len(each), 0, tiles, 2 * TILE)),
+        slowest=slowest,
+    )
 
 
 def pack_weights(terms: Terms, decay: FloatArray, gain: FloatArray) -> Terms:
@@ -164,14 +189,3 @@ def pack_weights(terms: Terms, decay: FloatArray, gain: FloatArray) -> Terms:
     tiled = _tiled(np.stack([decay, gain * moduli], axis=1))  # (tiles, n, 2, TILE)
     given = np.ascontiguousarray(np.moveaxis(tiled, 0, 1)).reshape(1, decay.shape[0], -1, 2 * TILE)
     return terms._replace(given=given)
-
-
-def widened(each: Sequence[Terms]) -> Terms:
-    """Several series side by side, filled up to the longest with terms that are not there."""
-    tiles = max(terms.packed.shape[1] for terms in each)
-    packed = np.zeros((len(each), tiles, 3 * TILE))
-    for row, terms in zip(packed, each, strict=True):
-        row[: terms.packed.shape[1]] = terms.packed[0]
-    nothing = np.empty((len(each), 0, tiles, 2 * TILE))
-    equilibrium = np.concatenate([terms.equilibrium for terms in each])
-    return Terms(equilibrium, packed, max(terms.width for terms in each), nothing)

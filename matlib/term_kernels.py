@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from matlib.arrays import FloatArray
 from matlib.compiling import summing
-from matlib.packing import TILE
+from matlib.packing import FOURS, TILE
 
 __all__ = ["ROW", "carry_and_look", "carry_mean", "carry_pairs", "forget", "look_mean", "stiffness"]
 
@@ -49,7 +49,7 @@ def carry_pairs(
             f0, f1, f2, f3, f4, f5 = e[b, 0], e[b, 1], e[b, 2], e[b, 3], e[b, 4], e[b, 5]
             s0 = s1 = s2 = s3 = s4 = s5 = 0.0
             t0 = t1 = t2 = t3 = t4 = t5 = 0.0
-            for i in range(m):
+            for i in range(m & FOURS):
                 d, g = pair[i], pair[i + T1]
                 d2, g2 = pair[i + T2], pair[i + T3]
                 v = d * q[i] + g * e0
@@ -108,7 +108,7 @@ def carry_and_look(
         now = weights[tile, ROW * row : ROW * (row + 1)]
         then = weights[tile, ROW * next_row : ROW * (next_row + 1)]
         s0 = s1 = s2 = s3 = s4 = s5 = 0.0
-        for i in range(m):
+        for i in range(m & FOURS):
             d, g, d2 = now[i], now[i + T1], then[i]
             v = d * q[i] + g * e0
             q[i] = v
@@ -142,7 +142,7 @@ def carry_mean(p: FloatArray, count: int, weights: FloatArray, row: int, volume:
     total = 0.0
     for tile in range(p.shape[0]):
         w, q = weights[tile, ROW * row : ROW * (row + 1)], p[tile]
-        for i in range(min(TILE, count - tile * TILE)):
+        for i in range(min(TILE, count - tile * TILE) & FOURS):
             v = w[i] * q[i] + w[i + T1] * volume
             q[i] = v
             total += v
@@ -155,7 +155,7 @@ def look_mean(p: FloatArray, count: int, weights: FloatArray, row: int) -> float
     total = 0.0
     for tile in range(p.shape[0]):
         w = weights[tile, ROW * row : ROW * (row + 1)]
-        for i in range(min(TILE, count - tile * TILE)):
+        for i in range(min(TILE, count - tile * TILE) & FOURS):
             total += w[i] * p[tile, i]
     return total
 
@@ -166,7 +166,7 @@ def stiffness(equilibrium: float, count: int, weights: FloatArray, row: int) -> 
     total = equilibrium
     for tile in range(weights.shape[0]):
         w = weights[tile, ROW * row : ROW * (row + 1)]
-        for i in range(min(TILE, count - tile * TILE)):
+        for i in range(min(TILE, count - tile * TILE) & FOURS):
             total += w[i + T1]
     return total
 

@@ -22,7 +22,7 @@ LAYERS = [  # from the bottom up; a module imports from lower layers, and from i
     "drivers.studies* drivers.sweep*",
     "drivers.report*",
     "drivers.commands*",
-    "drivers.cli drivers.pytest_plugin",
+    "drivers.cli drivers.__main__ drivers.pytest_plugin",
 ]
 
 

@@ -1,12 +1,11 @@
 r"""Time-temperature shift: one contract, one short file for each law.
 
 A law is an object with ``ln_shift(T)`` for arrays of kelvin. Laws of other people register through the entry-point
-group ``cardproof.shift_laws``.
+group ``cardproof.shift_laws``. Conversion of one into another is in `matlib.shift.conversion`, loaded where it is used.
 """
 
 from matlib.shift.arrhenius import Arrhenius
 from matlib.shift.base import ShiftLaw
-from matlib.shift.conversion import TARGETS, Conversion, convert_law
 from matlib.shift.crossover import Crossover
 from matlib.shift.difference import largest_difference_decades
 from matlib.shift.family import VftConstants, as_vft
@@ -23,11 +22,9 @@ from matlib.shift.wlf import WLF
 __all__ = [
     "OUTSIDE",
     "SHIFT_RULES",
-    "TARGETS",
     "VFT",
     "WLF",
     "Arrhenius",
-    "Conversion",
     "Crossover",
     "MeasuredRange",
     "NoShift",
@@ -40,7 +37,6 @@ __all__ = [
     "Table",
     "VftConstants",
     "as_vft",
-    "convert_law",
     "find_shift_rule",
     "largest_difference_decades",
     "move_reference",

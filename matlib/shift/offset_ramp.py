@@ -10,17 +10,12 @@ from __future__ import annotations
 import numpy as np
 
 from matlib.arrays import FloatArray
+from matlib.shift.gauss import unit_gauss
 
 __all__ = ["mean_rate_below", "scaled_exponential_integral"]
 
 
-def _gauss(count: int) -> list[tuple[float, float]]:
-    """Nodes and weights on [0, 1]."""
-    nodes, weights = np.polynomial.legendre.leggauss(count)
-    return list(zip((0.5 * (1.0 + nodes)).tolist(), (0.5 * weights).tolist(), strict=True))
-
-
-_NODES, _FEW_NODES = _gauss(14), _gauss(5)
+_NODES, _FEW_NODES = 14, 5
 _SHORT = 0.25  # a ramp shorter than this part of the hot end's height above the pole ...
 _GENTLE = 2.0  # ... over which ln a_T changes less than this: the difference would cancel, 14 nodes are exact
 _TINY, _FLAT = 0.02, 0.1  # below these in place of the two above, 5 nodes are exact: their error is under 1e-18
@@ -79,15 +74,15 @@ def scaled_exponential_integral(z: FloatArray) -> FloatArray:
     return g
 
 
-def mean_rate_below(u_cold: FloatArray, u_hot: FloatArray, B: float) -> FloatArray:
+def mean_rate_below(u_cold: FloatArray, u_hot: FloatArray, B: float | FloatArray) -> FloatArray:
     r"""Mean of :math:`\exp(B/u_{hot} - B/u)` over `u` from `u_cold` to `u_hot`.
 
     Parameters
     ----------
     u_cold, u_hot : ndarray
         Temperature above the pole at the two ends [K], ``0 < u_cold <= u_hot``; of one shape.
-    B : float
-        Constant of the law [K], ``> 0``.
+    B : float or ndarray
+        Constant of the law [K], ``> 0``; broadcasts to that shape.
 
     Returns
     -------
@@ -101,7 +96,7 @@ def mean_rate_below(u_cold: FloatArray, u_hot: FloatArray, B: float) -> FloatArr
     takes its place, exact to rounding there (5-node, where all ramps are gentle). The hot end is the factor taken out, so that a quench underflows.
     """
     shape = u_hot.shape
-    a, b = u_cold.ravel(), u_hot.ravel()
+    a, b, B = u_cold.ravel(), u_hot.ravel(), np.broadcast_to(B, shape).ravel()
     with np.errstate(over="ignore", under="ignore"):
         length = b - a
         d = B / a * (length / b)
@@ -109,19 +104,19 @@ def mean_rate_below(u_cold: FloatArray, u_hot: FloatArray, B: float) -> FloatArr
         mean = np.empty_like(b)
         if near.any():
             few = bool(np.all(length[near] < _TINY * b[near]) and np.max(d[near]) < _FLAT)
-            mean[near] = _by_nodes(length[near], b[near], B, _FEW_NODES if few else _NODES)
+            mean[near] = _by_nodes(length[near], b[near], B[near], _FEW_NODES if few else _NODES)
         far = ~near
         if far.any():
-            a, b, length = a[far], b[far], length[far]
+            a, b, B, length = a[far], b[far], B[far], length[far]
             cold = a * np.exp(-d[far]) * scaled_exponential_integral(B / a)
             mean[far] = (b * scaled_exponential_integral(B / b) - cold) / length
     return mean.reshape(shape)
 
 
-def _by_nodes(length: FloatArray, hot: FloatArray, B: float, nodes: list[tuple[float, float]]) -> FloatArray:
+def _by_nodes(length: FloatArray, hot: FloatArray, B: FloatArray, count: int) -> FloatArray:
     total = np.zeros_like(hot)
     slope = B / hot
-    for node, weight in nodes:
+    for node, weight in zip(*unit_gauss(count), strict=True):
         below = node * length
         total += weight * np.expm1(-slope * (below / (hot - below)))
     return 1.0 + total

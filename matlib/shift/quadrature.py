@@ -10,14 +10,14 @@ from numpy.typing import ArrayLike, NDArray
 from matlib.arrays import FloatArray
 from matlib.errors import ParameterError
 from matlib.shift.domain import LARGEST_LN_RATE
+from matlib.shift.gauss import unit_gauss
 
 __all__ = ["mean_rate_by_quadrature"]
 
-_NODES, _WEIGHTS = np.polynomial.legendre.leggauss(15)
-_NODES, _WEIGHTS = 0.5 * (1.0 + _NODES), 0.5 * _WEIGHTS  # on [0, 1]
 _TOLERANCE = 1e-14  # of the ramp's total; the sum of halves is far better than its difference from the whole
 _NOISE = 8.0 * np.finfo(np.float64).eps  # rounding of ln a_T, which a relative rate inherits
 _T_NOISE = np.finfo(np.float64).eps  # rounding of T, which moves ln a_T by the slope of the law
+_COUNT = 15
 _STEEP = 40.0  # an interval over which the rate changes more than exp(40)-fold may hide a peak between its nodes
 _DEPTH = 60
 
@@ -96,13 +96,14 @@ def _adapt(
     ln_fastest: FloatArray,
 ) -> FloatArray:
     """Mean rate of each ramp relative to its fastest."""
+    nodes, weights = unit_gauss(_COUNT)
 
     def estimate(owner: NDArray[np.intp], left: FloatArray, right: FloatArray) -> FloatArray:
-        T = left[:, None] + (right - left)[:, None] * _NODES
+        T = left[:, None] + (right - left)[:, None] * nodes
         relative = np.exp(
             np.minimum(ln_fastest[owner][:, None] - ln_shift(T.ravel()).reshape(T.shape), LARGEST_LN_RATE)
         )
-        return (relative @ _WEIGHTS) * ((right - left) / (high - low)[owner])
+        return (relative @ weights) * ((right - left) / (high - low)[owner])
 
     closed = np.zeros(low.size)
     left, right, ln_left, ln_right = edges[:, 0], edges[:, 1], ln_edges[:, 0], ln_edges[:, 1]

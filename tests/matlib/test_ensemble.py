@@ -14,7 +14,7 @@ from matlib.material import Material
 from matlib.packing import AS_GIVEN
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS
-from matlib.shift import SHIFT_RULES, WLF, NoShift
+from matlib.shift import SHIFT_RULES, WLF, NoShift, Table
 from matlib.viscoelastic import LinearViscoelastic
 
 
@@ -53,6 +53,7 @@ def path_of(*parts: Segment | Cycle) -> Path:
     return Path(name="p", mode=MODES["components"], start_temperature=353.15, parts=parts)
 
 
+TABLE = Table(T=np.array([300.0, 353.15, 400.0]), log10_a=np.array([3.0, 0.0, -2.0]), T_ref=353.15)
 PULL = segment({0: 0.01}, (1, 2))
 STRAINED = segment({0: 0.01, 4: 0.003}, (), temperatures=[360.0])
 CREEP = segment({0: 2e6}, (0, 1, 2))
@@ -109,11 +110,10 @@ def test_members_of_many_terms_stand_beside_members_of_few():
 def test_groups_and_blocks_and_threads_make_no_difference(threads):
     materials = sampled(GROUP + 2)
     path = path_of(dataclasses.replace(PULL, increments=GROUP_BLOCK + 3))
-    history = run_ensemble(materials, path, keep=500, threads=threads)
+    history = run_ensemble(materials, path, keep=GROUP_BLOCK // 2, threads=threads)
     assert history.stress.shape == (GROUP + 2, 1 + 2 + 1, 6)
-    chosen = [0, GROUP - 1, GROUP, GROUP + 1]
-    for index in chosen:
-        alone = drive(LinearViscoelastic(material=materials[index]), path, keep=500)
+    for index in (0, 17, 32, 33, GROUP - 1, GROUP, GROUP + 1):
+        alone = drive(LinearViscoelastic(material=materials[index]), path, keep=GROUP_BLOCK // 2)
         np.testing.assert_array_equal(history.time, alone.time)
         np.testing.assert_allclose(history.stress[index], alone.stress, rtol=0.0, atol=1e-12 * alone.peak_stress)
 
@@ -133,8 +133,14 @@ def test_a_law_that_is_shared_is_asked_once():
         return SHIFT_RULES["integrated"](law, dt, T_start, T_end)
 
     first = sampled(1)[0]
-    run_ensemble([first] * 4, path_of(PULL), shift_rule=rule)
+    dxi = Ensemble([first] * 4, shift_rule=rule).reduced_time(np.ones(2), [350.0, 351.0], [351.0, 352.0])
     assert asked == [first.shift]
+    assert np.array_equal(dxi, np.tile(dxi[0], (4, 1)))
+
+
+def test_a_law_outside_the_family_is_asked_by_itself():
+    cards = [dataclasses.replace(card, shift=law) for card, law in zip(sampled(2), (NoShift(), TABLE), strict=True)]
+    assert_each_as_alone(cards, PATHS["strains"], run_ensemble(cards, PATHS["strains"], keep="all"))
 
 
 def test_an_ensemble_of_nobody_is_refused():

@@ -4,7 +4,7 @@ import mpmath
 import numpy as np
 import pytest
 
-from matlib.packing import TILE, pack
+from matlib.packing import AWAY_FROM_0, SMALLEST, TILE, pack
 from matlib.prony import PronySeries
 from matlib.recursion import RECURSIONS
 from matlib.weight_kernels import A0, A1, A2, A3, A4, A5, A6, A7, A8, A9, LN2_HIGH, LN2_LOW, weigh
@@ -28,12 +28,12 @@ SIZES = np.concatenate(
 )
 
 
-def weights(name: str, r: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+def weights(name: str, r: np.ndarray, kind: int | None = None) -> tuple[np.ndarray, np.ndarray]:
     """Decay and gain of one term of unit time and modulus."""
     rows = np.zeros((1, r.size * 2 * TILE))
     form = RECURSIONS[name].form
     with np.errstate(over="ignore", under="ignore"):
-        weigh(form.kind, form.a, form.b, r, r.size, ONE.packed[0], ONE.width, rows)
+        weigh(form.kind if kind is None else kind, form.a, form.b, r, r.size, ONE.packed[0], ONE.width, rows)
     table = rows.reshape(r.size, 2 * TILE)
     return table[:, 0], table[:, TILE]
 
@@ -58,6 +58,18 @@ def test_decay_and_gain_are_right_to_4_units_in_the_last_place_from_nothing_to_1
     assert units_off(decay[normal], [exact_decay(sizes[k]) for k in normal]) <= 4.0
     normal = [k for k, r in enumerate(SIZES) if r < 707.0 or name != "midpoint"]
     assert units_off(gain[normal], [exact_gain(sizes[k]) for k in normal]) <= 4.0
+
+
+def test_away_from_0_fewer_steps_do_as_well():
+    sizes = SIZES[SIZES >= SMALLEST]
+    decay, gain = weights("exponential", sizes, AWAY_FROM_0)
+    exact_decay, exact_gain = EXACT["exponential"]
+    exact = [mpmath.mpf(r) for r in sizes.tolist()]
+    normal = [k for k, r in enumerate(sizes) if r < 707.0]
+    assert units_off(decay[normal], [exact_decay(exact[k]) for k in normal]) <= 4.0
+    assert units_off(gain, [exact_gain(r) for r in exact]) <= 4.0
+    decay, _ = weights("exponential", np.array([0.0]), AWAY_FROM_0)
+    assert decay.tolist() == [1.0]
 
 
 @pytest.mark.parametrize("name", ["exponential", "midpoint"])

@@ -5,7 +5,8 @@ import math
 import numpy as np
 import pytest
 
-from matlib.shift import SHIFT_RULES, VFT, WLF, Arrhenius, convert_law, largest_difference_decades, move_reference
+from matlib.shift import SHIFT_RULES, VFT, WLF, Arrhenius, largest_difference_decades, move_reference
+from matlib.shift.conversion import convert_law
 from matlib.units import ENERGY, GAS_CONSTANT, TEMPERATURE
 
 CELSIUS = 273.15

@@ -18,8 +18,8 @@ from matlib.shift import (
     Polynomial,
     ShiftLaw,
     Table,
-    convert_law,
 )
+from matlib.shift.conversion import convert_law
 
 LN10 = math.log(10.0)
 WLF_LAW = WLF(C1=14.2, C2=61.0, T_ref=353.15)

@@ -8,8 +8,9 @@ from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
 from matlib.errors import ConversionError, ParameterError, PoleError
-from matlib.shift import VFT, WLF, Arrhenius, Table, convert_law
+from matlib.shift import VFT, WLF, Arrhenius, Table
 from matlib.shift.akaike import akaike_weights, support
+from matlib.shift.conversion import convert_law
 from matlib.shift.fit import FORMS, fit_table
 from matlib.shift.fit_statistics import corrected_criterion, student_quantile
 
