@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import asyncio
 import logging
 import time
 import warnings
@@ -180,11 +181,9 @@ class _Feed:
     @contextmanager
     def told(self) -> Iterator[None]:
         """Whatever the connection to the scheduler raises ends the run with one line."""
-        from asyncio import CancelledError
-
         try:
             yield
-        except (CancelledError, OSError, RuntimeError, TimeoutError) as error:
+        except (asyncio.CancelledError, OSError, RuntimeError, TimeoutError) as error:
             raise ClusterError(self.address, f"{LOST} ({type(error).__name__}: {error})") from None
 
 
@@ -195,6 +194,7 @@ def _client(address: str) -> Iterator[Client]:
     except ImportError:
         raise ClusterError(address, "the package distributed is not installed; install cardproof[cluster]") from None
     try:
+        asyncio.run(_knock(address))
         client = Client(address, timeout=PATIENCE, set_as_default=False)
     except (OSError, ValueError, RuntimeError) as error:
         raise ClusterError(address, f"the scheduler does not answer ({error})") from None
@@ -204,6 +204,14 @@ def _client(address: str) -> Iterator[Client]:
         except TimeoutError:
             raise ClusterError(address, f"the scheduler has no worker after {PATIENCE:g} s") from None
         yield client
+
+
+async def _knock(address: str) -> None:
+    """Connect once, and leave: a client that found nobody would keep its thread, and might wait for itself when collected."""
+    from distributed.comm import connect
+
+    comm = await connect(address, timeout=PATIENCE)
+    await comm.close()
 
 
 @contextmanager
