@@ -29,6 +29,9 @@ GROUP = 128
 
 GROUPS_A_THREAD = 4
 
+MEMBERS_A_THREAD = 250
+"""Fewer are not worth another thread: what is not compiled takes turns, and small groups spend most of their time there."""
+
 GROUP_BLOCK = 512
 """Increments of a piece of a block; no block has twice as many."""
 
@@ -115,7 +118,7 @@ def run_ensemble(
     recursion, shift_rule : optional
         As in `Ensemble`.
     threads : int, optional
-        As many as there are processors to run on, if left out.
+        If left out, as many as there are processors to run on, and fewer for few members.
 
     Returns
     -------
@@ -136,7 +139,7 @@ def run_ensemble(
         raise ParameterError("threads", ">= 1", threads)
     if not materials:
         raise ParameterError("materials", "at least one", "none")
-    threads = threads or _processors()
+    threads = threads or max(1, min(_processors(), len(materials) // MEMBERS_A_THREAD))
     size = min(GROUP, -(-len(materials) // (GROUPS_A_THREAD * threads)))
 
     def take(first: int) -> list[_Rows]:
