@@ -8,8 +8,10 @@ from dataclasses import dataclass
 from typing import Any, Literal
 
 from matlib.card import Card, parse_card, plain
-from matlib.errors import ConversionError, FileError
+from matlib.errors import ConversionError, FileError, ShiftRangeError
+from matlib.shift.base import ShiftLaw
 from matlib.shift.conversion import Conversion, FitMethod, convert_law, fits_points
+from matlib.shift.difference import largest_difference_decades
 from matlib.shift_tables import written_shift
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
@@ -27,11 +29,15 @@ class ConvertedCard:
         The card that it was made from.
     tables : dict
         The new card as plain tables, in its own units.
+    service_error : (float, float), optional
+        Largest error of ``log10 a_T`` over the service window, and where [K]. None where the conversion is exact, was made
+        for all of the window, the card has none, or a law has no answer in part of it.
     """
 
     conversion: Conversion
     source: str
     tables: dict[str, Any]
+    service_error: tuple[float, float] | None = None
 
     @property
     def shift(self) -> dict[str, Any]:
@@ -106,7 +112,26 @@ def convert_card(
         parse_card(tables, card.file).material()
     except FileError as error:
         raise ConversionError(f"the converted card would be none: {error.faults[0]}") from None
-    return ConvertedCard(conversion=conversion, source=card.file, tables=tables)
+    return ConvertedCard(
+        conversion=conversion,
+        source=card.file,
+        tables=tables,
+        service_error=_service_error(law, conversion, card.service_temperature),
+    )
+
+
+def _service_error(
+    law: ShiftLaw, conversion: Conversion, window: tuple[float, float] | None
+) -> tuple[float, float] | None:
+    if conversion.fitted_range is None or window is None:
+        return None
+    (low, high), (cold, hot) = conversion.fitted_range, window
+    if low <= cold and hot <= high:
+        return None
+    try:
+        return largest_difference_decades(law, conversion.law, cold, hot, time_factor=conversion.time_factor)
+    except ShiftRangeError:
+        return None
 
 
 def _new_units(card: Card, units: tuple[Unit, ...]) -> dict[str, str]:

@@ -35,6 +35,10 @@ def convert_page(converted: ConvertedCard, old: Card, new: Card, origin: Origin)
         at = "" if conversion.error_at is None else f"at {temperature_text(conversion.error_at, old.temperature_unit)}"
         error = f"{conversion.largest_error_decades:.3g} decades of a_T"
         facts.append(Fact(label="Largest error", value=error, against=at))
+    if converted.service_error is not None:
+        decades, T = converted.service_error
+        at = f"at {temperature_text(T, old.temperature_unit)}, outside the range it was made for"
+        facts.append(Fact(label="Over the service window", value=f"{decades:.3g} decades", against=at))
     if conversion.time_factor != 1.0:
         moved = "relaxation times multiplied, as the reference moved"
         facts.append(Fact(label="Time factor", value=f"{conversion.time_factor:.6g}", against=moved))
@@ -68,7 +72,9 @@ def _pictures(converted: ConvertedCard, old: Card, new: Card) -> list[Picture]:
     label_lines(figure, 2)
     finding = "Rounding."
     if not conversion.exact:
-        finding = f"At most {conversion.largest_error_decades:.3g} decades over the fitted range."
+        finding = f"At most {conversion.largest_error_decades:.3g} decades over the fitted range"
+        beyond = converted.service_error
+        finding += "." if beyond is None else f", {beyond[0]:.3g} over the service window."
     pictures.append(picture(figure, "Error of the new law", finding))
     figure, axes = small_figure()
     curves = (

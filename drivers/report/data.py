@@ -61,6 +61,8 @@ def conversion_data(converted: ConvertedCard, file: str) -> dict[str, Any]:
         largest_error_decades=conversion.largest_error_decades,
         error_at=conversion.error_at,
         fitted_range=None if conversion.fitted_range is None else list(conversion.fitted_range),
+        service_error_decades=None if converted.service_error is None else converted.service_error[0],
+        service_error_at=None if converted.service_error is None else converted.service_error[1],
         law=converted.shift["law"],
         constants={key: value for key, value in converted.shift.items() if key != "law"},
         time_factor=conversion.time_factor,

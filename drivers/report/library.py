@@ -16,6 +16,7 @@ __all__ = ["Entry", "library_data", "library_tables", "worst_first"]
 
 Outcome = Literal["holds", "falls short", "missing", "unreadable"]
 ORDER: dict[Outcome, int] = {"unreadable": 0, "missing": 1, "falls short": 2, "holds": 3}
+MANY: dict[Outcome, str] = {"unreadable": "unreadable", "missing": "missing", "falls short": "fall short"}
 STYLES: dict[Outcome, str] = {"unreadable": "bold red", "missing": "red", "falls short": "red", "holds": "green"}
 
 
@@ -67,7 +68,11 @@ def _holds(entries: Sequence[Entry]) -> bool:
 def library_tables(what: str, entries: Sequence[Entry]) -> list[RenderableType]:
     """Verdict and summary; `what` names the entries, as in "cards"."""
     counts = {outcome: sum(entry.outcome == outcome for entry in entries) for outcome in ORDER}
-    found = ", ".join(f"{count} {outcome}" for outcome, count in counts.items() if count and outcome != "holds")
+    found = ", ".join(
+        f"{count} {MANY[outcome] if count > 1 else outcome}"
+        for outcome, count in counts.items()
+        if count and outcome != "holds"
+    )
     line = f"{counts['holds']} of {len(entries)} {what}" + (f"; {found}" if found else "")
     measured = any(entry.relative is not None for entry in entries)
     columns = [("card", "left"), ("", "left"), *([("difference", "right")] if measured else []), ("what", "left")]

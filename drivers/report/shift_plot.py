@@ -22,6 +22,7 @@ if TYPE_CHECKING:
 __all__ = ["LawLine", "Span", "common_span", "draw_laws", "draw_laws_apart", "log10_shift", "span_of"]
 
 POINTS = 300
+MOST_LIMITS = 6.0
 NEAR = 0.6
 """A pole is shown where it lies within this part of the range below it."""
 
@@ -147,5 +148,7 @@ def draw_laws_apart(axes: Axes, first: LawLine, second: LawLine, span: Span, lim
     if limit is not None and limit > 0.0:
         axes.axhline(limit, label="largest in the fitted range", **LIMIT)
         axes.axhline(-limit, **LIMIT)
+        if np.abs(apart).max() > MOST_LIMITS * limit:  # far outside the range; what the limit is about is to be seen
+            axes.set_ylim(-MOST_LIMITS * limit, MOST_LIMITS * limit)
     _shade(axes, span)
     finish(axes, f"temperature [{span.unit.name}]", "difference of log10 a_T [decades]")

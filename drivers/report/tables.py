@@ -111,6 +111,11 @@ def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[R
             low, high = (temperature_text(T, unit) for T in conversion.fitted_range)
             text += f", over {low} to {high}"
         line = Text.assemble(("inexact", "bold yellow"), text)
+    lines = [line]
+    if converted.service_error is not None:
+        decades, T = converted.service_error
+        beyond = f"Over the whole service window it is up to {decades:.3g} decades off, at {temperature_text(T, unit)}."
+        lines.append(Text(beyond))
     table = plain_table("", [("constant", "left"), ("value", "right"), ("unit", "left")])
     for key, value in converted.shift.items():
         shown = f"{value:.10g}" if isinstance(value, float) else str(value)
@@ -119,7 +124,7 @@ def conversion_tables(converted: ConvertedCard, file: str, unit: Unit) -> list[R
         table.add_row(key, shown, _constant_unit(key, converted))
     if conversion.time_factor != 1.0:
         table.add_row("times multiplied by", f"{conversion.time_factor:.10g}", "-")
-    return [line, table]
+    return [*lines, table]
 
 
 def _constant_unit(key: str, converted: ConvertedCard) -> str:

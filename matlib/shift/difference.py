@@ -67,7 +67,13 @@ def largest_value(f: Callable[[FloatArray], FloatArray], T: FloatArray) -> tuple
 
 
 def largest_difference_decades(
-    law_a: ShiftLaw, law_b: ShiftLaw, T_low: float, T_high: float, *, T_common: float | None = None
+    law_a: ShiftLaw,
+    law_b: ShiftLaw,
+    T_low: float,
+    T_high: float,
+    *,
+    T_common: float | None = None,
+    time_factor: float = 1.0,
 ) -> tuple[float, float]:
     r"""Largest difference of :math:`\log_{10} a_T` between two laws over a temperature range.
 
@@ -79,6 +85,8 @@ def largest_difference_decades(
         Range [K], ``T_low <= T_high``.
     T_common : float, optional
         Temperature [K] where both are taken as 1, whatever their references.
+    time_factor : float, optional
+        How many times longer the relaxation times are that go with the second law; its shift factors count so much more.
 
     Returns
     -------
@@ -103,7 +111,9 @@ def largest_difference_decades(
     if require_positive("T_high", T_high, "K") < T_low:
         raise ParameterError("T_high", f"at or above T_low = {T_low:g} K", f"{T_high:g} K")
 
-    offset = 0.0 if T_common is None else float(law_a.ln_shift(T_common) - law_b.ln_shift(T_common))
+    offset = math.log(time_factor)
+    if T_common is not None:
+        offset = float(law_a.ln_shift(T_common) - law_b.ln_shift(T_common))
 
     def difference(T: FloatArray) -> FloatArray:
         return np.abs(law_a.ln_shift(T) - law_b.ln_shift(T) - offset) / math.log(10.0)

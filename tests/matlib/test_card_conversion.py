@@ -201,6 +201,25 @@ def test_an_inexact_card_says_so_with_its_largest_error_and_range(tmp_path):
     assert made_from["largest_error_decades"] > 0.01
 
 
+def test_what_a_narrow_range_leaves_out_of_the_service_window_is_told(tmp_path):
+    card = read(tmp_path, SOUND)  # service from 60 to 110 degC
+    cold, hot = card.service_temperature
+    for T_ref in (None, 350.0):
+        narrow = convert_card(card, "arrhenius", T_range=(353.15, 363.15), T_ref=T_ref)
+        decades, at = narrow.service_error
+        assert at in (cold, hot)
+        old, new = card.material(), read_back(narrow, tmp_path / "new").material()
+        # times that belong together: the new relaxation times have moved with the reference
+        moved = np.log(new.shear.times / old.shear.times)[0]
+        apart = abs(float(new.shift.ln_shift(at) + moved - old.shift.ln_shift(at))) / LN10
+        assert decades == pytest.approx(apart, rel=1e-9)
+        assert decades > narrow.conversion.largest_error_decades
+    assert convert_card(card, "arrhenius").service_error is None  # the measured range holds the window
+    assert convert_card(card, "vft", T_range=(353.15, 363.15)).service_error is None
+    cold_card = changed({"service.temperature": [-200.0, 110.0]})
+    assert convert_card(read(tmp_path, cold_card), "arrhenius").service_error is None  # the pole: a law has no answer
+
+
 def test_the_range_of_an_inexact_conversion_is_the_one_asked_for_or_measured_or_of_service(tmp_path):
     def fitted(tables, **options):
         low, high = convert_card(read(tmp_path, tables), "arrhenius", **options).tables["made_from"]["range"]

@@ -44,6 +44,8 @@ for (const e of document.querySelectorAll('h1, h2, h3, p, dt, dd, figure, figcap
   const box = e.getBoundingClientRect();
   if (box.right > innerWidth + 0.5 || box.left < -0.5) found.outside.push(e.outerHTML.slice(0, 80));
 }
+if (innerWidth <= 576) for (const e of document.querySelectorAll('table.said'))  // sentences are read without scrolling
+  if (e.scrollWidth > e.parentElement.clientWidth + 1) found.outside.push(e.textContent.trim().slice(0, 80));
 const meets = (a, b) => Math.min(a.right, b.right) - Math.max(a.left, b.left) > 1.5 && Math.min(a.bottom, b.bottom) - Math.max(a.top, b.top) > 1.5;
 const parts = 'h1, h2, h3, main > p, dl.facts > div, figure, .scroll, pre, li, footer p';
 const blocks = [...document.querySelectorAll(parts)].map(e => [e, e.getBoundingClientRect()]);
