@@ -12,7 +12,7 @@ from drivers.path import MODES, Cycle, Mode, Path, Segment
 from drivers.record_file import read_record
 from matlib.arrays import BoolArray, FloatArray
 from matlib.card_schema import Number, StressUnit, TemperatureUnit, TimeUnit, not_lost
-from matlib.documents import Document, read_toml, shown, validated
+from matlib.documents import Document, read_toml, require_kind, shown, validated
 from matlib.errors import Fault, FaultyInputError
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, mandel_from_strain, mandel_from_stress
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
@@ -215,6 +215,7 @@ def read_path(file: str | FilePath) -> Path:
         With every fault of the file at once.
     """
     data = read_toml(file)
+    require_kind(data, "path", str(file))
     try:
         document = validated(PathDocument, data)
         if document.record is not None:

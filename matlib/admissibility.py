@@ -21,6 +21,8 @@ from matlib.shift_findings import law_findings, measured_range_findings, pole_fi
 __all__ = ["Finding", "check_card", "is_admissible"]
 
 GRID = 400
+LITTLE = 0.01
+LARGEST_EXPANSION = 1e-3  # 1/K; rubbers have some 2e-4 (common practice, no source)
 
 
 def check_card(card: Card) -> list[Finding]:
@@ -71,11 +73,13 @@ def _equal_times(card: Card) -> list[Finding]:
 def _behaviour(card: Card, material: Material) -> list[Finding]:
     checks: list[Callable[[Card, Material], list[Finding]]] = [
         _long_term_stiffness,
+        _hardly_relaxing,
         _poisson,
         law_findings,
         pole_findings,
         measured_range_findings,
         _shift_in_service,
+        _expansion,
     ]
     findings = [finding for check in checks for finding in check(card, material)]
     if card.document.service is None:
@@ -94,6 +98,18 @@ def _long_term_stiffness(card: Card, material: Material) -> list[Finding]:
             )
             findings.append(Finding(id="no-long-term-stiffness", severity="warning", message=message))
     return findings
+
+
+def _hardly_relaxing(card: Card, material: Material) -> list[Finding]:
+    series = material.shear
+    share = 1.0 - series.equilibrium / series.instantaneous
+    if series.times.size == 0 or share >= LITTLE:
+        return []
+    message = (
+        f"shear: all terms together carry {100.0 * share:.2g} % of the modulus, so the card is all but elastic; look at "
+        "prony.relative_to, and whether each row is [relaxation time, fraction or modulus]."
+    )
+    return [Finding(id="hardly-relaxes", severity="warning", message=message)]
 
 
 def _poisson(card: Card, material: Material) -> list[Finding]:
@@ -119,6 +135,19 @@ def _poisson(card: Card, material: Material) -> list[Finding]:
         )
         findings.append(Finding(id="poisson-ratio", severity="error", message=message))
     return findings
+
+
+def _expansion(card: Card, material: Material) -> list[Finding]:
+    if card.document.expansion is None:
+        message = "no [expansion] table, so thermal strain is taken as 0; add alpha where temperature changes matter."
+        return [Finding(id="expansion-not-stated", severity="note", message=message)]
+    if abs(material.expansion) > LARGEST_EXPANSION:
+        message = (
+            f"expansion.alpha is {material.expansion:.3g} 1/K, more than {LARGEST_EXPANSION:g} 1/K, which is not that of a solid; "
+            "look at its unit: 26 ppm/K is 26e-6."
+        )
+        return [Finding(id="expansion-too-large", severity="warning", message=message)]
+    return []
 
 
 def _shift_in_service(card: Card, material: Material) -> list[Finding]:

@@ -14,7 +14,7 @@ import numpy as np
 from matlib.arrays import frozen
 from matlib.card_faults import constant_faults, contradictions
 from matlib.card_schema import CardDocument, PronyTable
-from matlib.documents import read_toml, validated
+from matlib.documents import read_toml, require_kind, validated
 from matlib.effective import shear_and_bulk_of_young
 from matlib.elastic import ElasticConstants, elastic_constants
 from matlib.errors import Fault, FaultyInputError, FileError, ParameterError, ShiftRangeError
@@ -206,7 +206,9 @@ def read_card(file: str | Path) -> Card:
     FileError
         With every fault of the file at once.
     """
-    return parse_card(read_toml(file), str(file))
+    data = read_toml(file)
+    require_kind(data, "card", str(file))
+    return parse_card(data, str(file))
 
 
 def parse_card(data: dict[str, Any], file: str) -> Card:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import contextlib
 import os
+import re
 import stat
 import tomllib
 from collections.abc import Callable, Sequence
@@ -13,7 +14,7 @@ from typing import Any, TypeVar
 from pydantic import BaseModel, ConfigDict, ValidationError
 from pydantic_core import ErrorDetails
 
-from matlib.errors import Fault, FaultyInputError, FileError, FilesError
+from matlib.errors import Fault, FaultyInputError, FileError, FilesError, nearest_hint
 
 __all__ = [
     "Document",
@@ -111,8 +112,37 @@ def read_toml(file: str | Path) -> dict[str, Any]:
     try:
         return tomllib.loads(text)
     except (ValueError, RecursionError) as error:
-        found = "nesting without end" if isinstance(error, RecursionError) else " ".join(str(error).split())
-        raise FileError(str(file), [Fault(key="file", found=shown_text(found), expected="valid TOML")]) from None
+        found, hint = ("nesting without end", "") if isinstance(error, RecursionError) else _bad_line(text, str(error))
+        raise FileError(str(file), [Fault(key="file", found=found, expected="valid TOML", hint=hint)]) from None
+
+
+def _bad_line(text: str, message: str) -> tuple[str, str]:
+    """What the reader of TOML says, with the line that it means, and a hint."""
+    found, at = " ".join(message.split()), re.search(r"at line (\d+)", message)
+    lines = text.splitlines()
+    if at is None or not 0 < int(at[1]) <= len(lines):
+        return shown_text(found), ""
+    line = lines[int(at[1]) - 1].strip()
+    comma = re.search(r"=\s*[-+]?\d+,\d", line)
+    return f"{shown(line)}: {shown_text(found)}", "write a decimal point in place of the comma" if comma else ""
+
+
+KEYS_OF_KINDS = {
+    "card": {"elastic", "prony", "shift"},
+    "path": {"segment", "record"},
+    "routine file": {"library", "python"},
+    "sweep": {"cases"},
+}
+
+
+def require_kind(data: dict[str, Any], wanted: str, file: str) -> None:
+    """Raise `FileError` where the tables of a file are those of another kind: its faults one by one would not tell."""
+    if data.keys() & KEYS_OF_KINDS[wanted]:
+        return
+    for kind, keys in KEYS_OF_KINDS.items():
+        if data.keys() & keys:
+            hint = "look at the order of the arguments"
+            raise FileError(file, [Fault(key="file", found=f"a {kind}", expected=f"a {wanted}", hint=hint)])
 
 
 def shown_text(text: str, width: int = 120) -> str:
@@ -149,14 +179,12 @@ def _expected(error: ErrorDetails, model: type[BaseModel]) -> tuple[str, str]:
         return _description(error["loc"], model) or "a value for this key", "add the key"
     if kind == "extra_forbidden":
         known = sorted(_fields(error["loc"][:-1], model))
-        by_case = {name.casefold(): name for name in known}
-        import difflib
-
-        close = difflib.get_close_matches(str(error["loc"][-1]).casefold(), by_case, n=1)
-        hint = f"write {by_case[close[0]]!r}" if close else "remove the key"
+        hint = nearest_hint(error["loc"][-1], known) or "remove the key"
         return "one of the keys " + ", ".join(known), hint
     if kind == "literal_error":
-        return f"one of {context['expected']}", ""
+        return f"one of {context['expected']}", nearest_hint(
+            error["input"], re.findall(r"'([^']*)'", context["expected"])
+        )
     if kind in ("too_short", "too_long"):
         most = context.get("max_length")
         least = context.get("min_length")

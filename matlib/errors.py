@@ -17,6 +17,7 @@ __all__ = [
     "ShiftRangeError",
     "UnknownNameError",
     "both_scales",
+    "nearest_hint",
 ]
 
 
@@ -108,6 +109,23 @@ class PoleError(ShiftRangeError):
         self.args = (law, temperature, pole)
 
 
+def nearest_hint(found: object, known: Iterable[str]) -> str:
+    """Which of the known words to write in place of one, where one of them is near; else nothing.
+
+    Examples
+    --------
+    >>> nearest_hint("WLF", ["wlf", "vft"]), nearest_hint("table", ["wlf", "vft"])
+    ("write 'wlf'", '')
+    """
+    import difflib
+
+    if not isinstance(found, str):
+        return ""
+    by_case = {name.casefold(): name for name in known}
+    close = difflib.get_close_matches(found.casefold(), by_case, n=1)
+    return f"write {by_case[close[0]]!r}" if close else ""
+
+
 class UnknownNameError(CardproofError, LookupError):
     """A name that stands for nothing; the message lists the known ones."""
 
@@ -118,7 +136,8 @@ class UnknownNameError(CardproofError, LookupError):
         super().__init__(kind, name, self.known)
 
     def __str__(self) -> str:
-        return f"unknown {self.kind} {self.name!r}: use one of {', '.join(self.known)}"
+        hint = nearest_hint(self.name, self.known)
+        return f"unknown {self.kind} {self.name!r}: use one of {', '.join(self.known)}" + (hint and f"; {hint}")
 
 
 class ConversionError(CardproofError, ValueError):

@@ -10,7 +10,7 @@ from pydantic import Field, model_validator
 from matlib.arrays import frozen
 from matlib.card_schema import Coefficient, EnergyUnit, Number, Pair
 from matlib.documents import ContradictionError, Document, shown, validated
-from matlib.errors import Fault, FaultyInputError, ParameterError, UnknownNameError
+from matlib.errors import Fault, FaultyInputError, ParameterError, nearest_hint
 from matlib.shift import (
     VFT,
     WLF,
@@ -224,8 +224,11 @@ def parse_shift(table: dict[str, Any], prefix: tuple[str, ...] = ("shift",)) -> 
         return law_table
     plugins = plugin_laws()
     if name not in plugins:
-        error = UnknownNameError("shift law", name, [*LAW_TABLES, *plugins])
-        raise FaultyInputError([Fault(key=f"{key}.law", found=repr(name), expected=f"one of {', '.join(error.known)}")])
+        names = [*LAW_TABLES, *plugins]
+        fault = Fault(
+            key=f"{key}.law", found=repr(name), expected=f"one of {', '.join(names)}", hint=nearest_hint(name, names)
+        )
+        raise FaultyInputError([fault])
     return PluginTable(law=name, constants={k: v for k, v in table.items() if k != "law"})
 
 

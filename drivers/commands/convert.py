@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Literal
+
+from rich.text import Text
 
 from drivers.commands.output import deliver, require_folder
 from drivers.commands.reporting import Report, inputs_of, origin_of
@@ -59,9 +62,12 @@ def run(
         units=tuple(_find_any_unit(name) for name in units),
         fit=_parse_fit(fit),
     )
-    inputs = inputs_of(report, [(file, "card A")])  # before it is written over, where the new card takes its name
+    replaces = os.path.realpath(file) == os.path.realpath(output)
+    inputs = inputs_of(report, [(file, "card A")])  # before it may be written over
     write_atomically(output, converted.text())
     tables = [*conversion_tables(converted, output, unit), *fit_tables(converted)]
+    if replaces:
+        tables.append(Text(f"{output} has taken the place of the card that it was made from."))
 
     def page(wanted: Report) -> Page:
         from drivers.report.convert_page import convert_page

@@ -13,7 +13,7 @@ from rich.text import Text
 from drivers.baseline_file import Baseline
 from drivers.report.data import envelope, place_data, slip_data
 from drivers.report.moved import moved_data, moved_sentence
-from drivers.report.tables import percent, place_text, plain_table, slip_tables, verdict_line
+from drivers.report.tables import give_way, percent, place_text, plain_table, slip_tables, verdict_line
 from drivers.studies.baseline import PathVerdict, Verification
 from drivers.studies.moved import Moved
 from drivers.studies.slips import Slip
@@ -179,9 +179,7 @@ def _moved_lines(verified: Verified) -> list[RenderableType]:
 
 def _paths_table(paths: Sequence[PathVerdict], card: Card) -> Table:
     columns = [("path", "left"), ("change", "right"), ("accepted", "right"), ("in", "left"), ("largest at", "left")]
-    table = plain_table("", [*columns, ("", "left")])
-    for column in table.columns[:4]:
-        column.no_wrap = True
+    table = give_way(plain_table("", [*columns, ("", "left")]), {0: 12, 4: 12})
     for path in sorted(paths, key=lambda path: -path.ratio):
         mark = Text("holds", style="green") if path.holds else Text("moved", style="red")
         difference, accepted = path.difference, percent(path.tolerance)

@@ -6,13 +6,15 @@ from drivers.baseline_file import Baseline
 from drivers.report.axes import label_lines, small_figure
 from drivers.report.baseline import Verified, recorded_tables, verdict_text, verified_tables
 from drivers.report.baseline_plot import draw_before_after, draw_change, draw_ratios
-from drivers.report.page import Fact, Origin, Page, Picture, picture
+from drivers.report.constants import constants_table
+from drivers.report.page import Fact, Origin, Page, PageTable, Picture, picture
 from drivers.report.parts import parts_of
 from drivers.report.response_plot import draw_answer
 from drivers.report.tables import percent, place_text, remaining_text
 from drivers.studies.baseline import PathVerdict
 from drivers.studies.spread import PathScatter
 from matlib.card import Card
+from matlib.errors import FileError
 
 __all__ = ["recorded_page", "verified_page"]
 
@@ -37,10 +39,18 @@ def verified_page(verified: Verified, origin: Origin) -> Page:
         lead=parts.lead,
         facts=_facts(verified),
         pictures=_pictures(verified),
-        tables=parts.tables,
+        tables=[*parts.tables, _constants(verified)],
         origin=origin,
         settings=settings,
     )
+
+
+def _constants(verified: Verified) -> PageTable:
+    try:
+        recorded = verified.baseline.card()
+    except FileError:  # a plug-in law that is gone
+        return constants_table({"now": verified.card})
+    return constants_table({"recorded": recorded, "now": verified.card})
 
 
 def _facts(verified: Verified) -> list[Fact]:
@@ -121,6 +131,6 @@ def recorded_page(baseline: Baseline, card: Card, file: str, origin: Origin) -> 
             Fact(label="Probe points", value=str(sum(len(recorded.rows) for recorded in baseline.paths))),
         ],
         pictures=pictures,
-        tables=parts.tables,
+        tables=[*parts.tables, constants_table({"recorded": card})],
         origin=origin,
     )

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from drivers.report.axes import FIRST, label_lines, small_figure
+from drivers.report.constants import constants_table
 from drivers.report.page import Fact, Origin, Page, PageTable, Picture, picture
 from drivers.report.shift_plot import LawLine, draw_laws, span_of
 from drivers.report.spectrum_plot import decade_text, draw_spectrum, reduced_window
@@ -40,7 +41,7 @@ def check_page(results: Checked, origin: Origin) -> Page:
             *([] if one is None else _service_facts(one)),
         ],
         pictures=[shown for card, _ in results for shown in card_pictures(card, named=one is None)],
-        tables=[*findings_tables(results), *(_constants(card) for card, _ in results)],
+        tables=[*findings_tables(results), *(table for card, _ in results for table in _constants(card))],
         origin=origin,
     )
 
@@ -73,8 +74,8 @@ def material_of(card: Card) -> Material | None:
         return None
 
 
-def _constants(card: Card) -> PageTable:
-    """Every term, as a material has it."""
+def _constants(card: Card) -> list[PageTable]:
+    """The card's own constants, and every term as a material has it."""
     caption = f"Terms of {card.name} ({card.file})"
     time, stress = card.time_unit, card.stress_unit
     headers = ["modulus", f"relaxation time [{time.name}]", f"modulus [{stress.name}]", "fraction [-]"]
@@ -86,7 +87,8 @@ def _constants(card: Card) -> PageTable:
         for tau, term, share in zip(series.times, series.moduli, series.fractions, strict=True):
             cells = time.from_si(float(tau)), stress.from_si(float(term)), float(share)
             rows.append([name, *(f"{cell:.6g}" for cell in cells)])
-    return PageTable(caption=caption, headers=headers, rows=rows or [["no material", "", "", ""]], numeric=[1, 2, 3])
+    terms = PageTable(caption=caption, headers=headers, rows=rows or [["no material", "", "", ""]], numeric=[1, 2, 3])
+    return [constants_table({"value": card}, f"Constants of {card.name} ({card.file})", terms=False), terms]
 
 
 def card_pictures(card: Card, *, named: bool) -> list[Picture]:

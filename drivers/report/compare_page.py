@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from drivers.report.axes import FIRST, SECOND, label_lines, small_figure
+from drivers.report.constants import constants_table
 from drivers.report.page import Fact, Origin, Page, Picture, picture
 from drivers.report.parts import parts_of
 from drivers.report.response_plot import draw_apart, draw_pair
@@ -34,6 +35,7 @@ def compare_page(comparison: Comparison, a: Subject, b: Subject, slips: Sequence
     tables = comparison_tables(comparison, a, b)
     parts = parts_of([tables[0], *slip_tables(slips), *tables[1:]], ["Every path, the worst first"])
     count = len(comparison.paths)
+    both = [constants_table({"A": a, "B": b})] if isinstance(a, Card) and isinstance(b, Card) else []
     return Page(
         title=f"Compared: A, {a.name} ({a.file}), with B, {b.name} ({b.file}), on {count} path{'s' if count > 1 else ''}",
         holds=comparison.holds,
@@ -41,7 +43,7 @@ def compare_page(comparison: Comparison, a: Subject, b: Subject, slips: Sequence
         lead=parts.lead,
         facts=_facts(comparison, a, slips),
         pictures=comparison_pictures(comparison, a, b),
-        tables=parts.tables,
+        tables=[*parts.tables, *both],
         origin=origin,
         settings={"Tolerance": f"{percent(comparison.tolerance)} of each path's peak"},
     )

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 from drivers.report.axes import FIRST, SECOND, label_lines, small_figure
+from drivers.report.constants import constants_table
 from drivers.report.fit import fit_tables
 from drivers.report.page import Fact, Origin, Page, Picture, picture
 from drivers.report.parts import parts_of
@@ -49,7 +50,7 @@ def convert_page(converted: ConvertedCard, old: Card, new: Card, origin: Origin)
         lead=parts.lead,
         facts=facts,
         pictures=_pictures(converted, old, new),
-        tables=parts.tables,
+        tables=[*parts.tables, constants_table({"A": old, "B": new})],
         origin=origin,
     )
 

@@ -10,13 +10,14 @@ from rich.console import RenderableType
 from rich.text import Text
 
 from drivers.report.data import envelope
-from drivers.report.tables import percent, plain_table, verdict_line
+from drivers.report.tables import give_way, percent, plain_table, verdict_line
 
 __all__ = ["Entry", "library_data", "library_tables", "worst_first"]
 
 Outcome = Literal["holds", "falls short", "missing", "unreadable"]
 ORDER: dict[Outcome, int] = {"unreadable": 0, "missing": 1, "falls short": 2, "holds": 3}
 MANY: dict[Outcome, str] = {"unreadable": "unreadable", "missing": "missing", "falls short": "fall short"}
+LONG_NAME = 18
 STYLES: dict[Outcome, str] = {"unreadable": "bold red", "missing": "red", "falls short": "red", "holds": "green"}
 
 
@@ -76,7 +77,8 @@ def library_tables(what: str, entries: Sequence[Entry]) -> list[RenderableType]:
     line = f"{counts['holds']} of {len(entries)} {what}" + (f"; {found}" if found else "")
     measured = any(entry.relative is not None for entry in entries)
     columns = [("card", "left"), ("", "left"), *([("difference", "right")] if measured else []), ("what", "left")]
-    table = plain_table("", columns)
+    longest = max((len(entry.name) for entry in entries), default=0)
+    table = give_way(plain_table("", columns), {0: min(longest, LONG_NAME), len(columns) - 1: 14})
     for entry in worst_first(entries):
         row = [Text(entry.name), Text(entry.outcome, style=STYLES[entry.outcome])]
         if measured:

@@ -9,6 +9,7 @@ from drivers.path import Path
 from drivers.report.axes import FIRST, SECOND
 from drivers.report.response_plot import draw_apart, draw_loop, draw_pair, draw_stress, draw_temperature
 from drivers.report.shift_plot import LawLine, common_span, draw_laws
+from drivers.report.tables import told_apart
 from drivers.studies.compare import Comparison
 from drivers.subject import Subject
 from matlib.card import Card
@@ -74,6 +75,7 @@ def comparison_figure(comparison: Comparison, a: Subject, b: Subject) -> Figure:
         right = figure.add_subplot(grid[:, 1])
         draw_laws(right, laws, common_span(a, b), "shift laws")
         right.legend(frameon=False)
-    names = f"A (solid): {a.name}\nB (dashed): {b.name}"
+    first, second = told_apart(a, b)
+    names = f"A (solid): {first}\nB (dashed): {second}"
     figure.suptitle(f"{comparison.same}\n{names}", fontsize=10, x=0.01, ha="left", parse_math=False)
     return figure

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from rich.table import Table
@@ -51,6 +51,14 @@ def plain_table(title: str, columns: Sequence[tuple[str, str]]) -> Table:
     table = Table(title=title, title_justify="left", title_style="bold", box=None, pad_edge=False, padding=(0, 2, 0, 0))
     for heading, side in columns:
         table.add_column(heading, justify="right" if side == "right" else "left", overflow="fold")
+    return table
+
+
+def give_way(table: Table, least: Mapping[int, int]) -> Table:
+    """Let these columns wrap, down to some width, where the terminal is narrow; no other does."""
+    for number, column in enumerate(table.columns):
+        column.no_wrap = number not in least
+        column.min_width = least.get(number)
     return table
 
 
@@ -131,8 +139,10 @@ def _constant_unit(key: str, converted: ConvertedCard) -> str:
     """Unit of a constant of the new card."""
     temperature = converted.units["temperature"]
     match key:
-        case "T_ref" | "T_inf" | "C2" | "B" | "measured":
+        case "T_ref" | "T_inf" | "measured":
             return temperature
+        case "C2" | "B":  # differences, which a reader must not shift to another zero
+            return "degF" if temperature == "degF" else "K"
         case "activation_energy":
             return str(converted.shift.get("energy_unit", "kJ/mol"))
         case "gas_constant":
@@ -180,11 +190,18 @@ def comparison_tables(comparison: Comparison, a: Subject, b: Subject) -> list[Re
     """Verdict, shift laws, paths: the worst first."""
     worst = comparison.worst
     return [
-        verdict_line(comparison.holds, f"{a.name} and {b.name} are {_same_text(comparison, worst)}"),
+        verdict_line(comparison.holds, f"{' and '.join(told_apart(a, b))} are {_same_text(comparison, worst)}"),
         Text(_shift_text(comparison, a.temperature_unit)),
         *([Text(_bound_text(comparison))] if comparison.same != "identical" else []),
         _paths_table(_worst_first(comparison.paths), a),
     ]
+
+
+def told_apart(a: Subject, b: Subject) -> tuple[str, str]:
+    """The names of two, each with its file where one name would stand for both."""
+    if a.name != b.name or a.file == b.file:
+        return a.name, b.name
+    return f"{a.name} ({a.file})", f"{b.name} ({b.file})"
 
 
 def slip_tables(slips: Sequence[Slip]) -> list[RenderableType]:
@@ -221,7 +238,8 @@ def _shift_text(comparison: Comparison, unit: Unit) -> str:
     shift = comparison.shift
     if shift.decades is None or shift.temperature is None:
         return f"Shift laws: {shift.reason}"
-    return f"Shift laws: at most {shift.decades:.3g} decades apart, at {temperature_text(shift.temperature, unit)}"
+    at = temperature_text(shift.temperature, unit)
+    return f"Shift laws, both taken as 1 at one temperature: at most {shift.decades:.3g} decades apart, at {at}"
 
 
 def _bound_text(comparison: Comparison) -> str:
@@ -246,9 +264,7 @@ def place_text(at: Where, unit: Unit) -> str:
 
 def _paths_table(paths: Sequence[PathComparison], a: Subject) -> Table:
     columns = [("path", "left"), ("difference", "right"), ("in", "left"), ("largest at", "left"), ("", "left")]
-    table = plain_table("", columns)
-    for column in table.columns[:3]:
-        column.no_wrap = True
+    table = give_way(plain_table("", columns), {0: 14, 3: 14})
     for result in paths:
         mark = Text("holds", style="green") if result.holds else Text("differs", style="red")
         if result.identical:

@@ -133,6 +133,13 @@ def test_convert_writes_an_exact_card_that_compares_as_identical(data):
     assert (compared["same"], status) == ("identical", 0)
 
 
+def test_a_conversion_onto_its_own_card_says_so(run, here):
+    told = "a.card.toml has taken the place of the card that it was made from"
+    assert told not in run("convert", "a.card.toml", "--to", "vft", "-o", "new.card.toml").words
+    assert told in run("convert", "a.card.toml", "--to", "vft", "-o", "a.card.toml").words
+    assert read_card("a.card.toml").law_table.model_dump()["law"] == "vft"
+
+
 def test_convert_marks_an_inexact_card(data):
     found, status = data(
         "convert", "a.card.toml", "--to", "arrhenius", "--range", "70degC", "373.15K", "-o", "new.card.toml"

@@ -134,7 +134,8 @@ def test_components_named_twice_or_not_at_all_are_refused(write):
 def test_a_wrong_component_is_named_with_the_right_ones(write):
     text = HEAD.replace("uniaxial stress", "components") + COMPONENTS.replace("g12", "e12")
     found = faults_of(write(text))
-    assert found["segment[1].strain.e12"] == "found 'e12', expected one of 'e11', 'e22', 'e33', 'g23', 'g13' or 'g12'"
+    names = "'e11', 'e22', 'e33', 'g23', 'g13' or 'g12'"
+    assert found["segment[1].strain.e12"] == f"found 'e12', expected one of {names}; write 'g12'"
 
 
 def test_a_cycle_repeats_its_segments(write):

@@ -173,7 +173,7 @@ def test_cards_that_differ_are_told_first_how_much_and_where(card):
     lines = lines_of(card, given)
     assert lines[0].startswith("falls short: resin [a], revision 2 and resin [a], revision 2 are different: ")
     assert lines[0].endswith("12.5 % of the peak stress apart on path 'pull at 80'")
-    assert lines[1] == "Shift laws: at most 0.25 decades apart, at 60 degC"
+    assert lines[1] == "Shift laws, both taken as 1 at one temperature: at most 0.25 decades apart, at 60 degC"
     assert "guaranteed to 2e-07 %" in lines[2]
     worst, other = lines[-2:]
     assert worst.split("  ")[0] == "pull at 80"
@@ -181,6 +181,23 @@ def test_cards_that_differ_are_told_first_how_much_and_where(card):
         assert part in worst
     assert other.startswith("creep")
     assert other.endswith("holds")
+
+
+def test_two_cards_of_one_name_are_told_apart_by_their_files(card):
+    other = dataclasses.replace(card, file="other.card.toml")
+    lines = text_of(comparison_tables(comparison("different", result("creep", 0.5, holds=False)), card, other))
+    assert lines.startswith(f"falls short: {card.name} ({card.file}) and {card.name} (other.card.toml) are different: ")
+
+
+@pytest.mark.parametrize("width", [60, 200])
+def test_words_of_a_comparison_stay_whole_on_a_narrow_terminal(card, width):
+    given = comparison("different", result("pull of 1.6e+05 s, 125 degC", 0.125, holds=False), result("creep", 0.005))
+    console = Console(width=width, file=io.StringIO(), highlight=False)
+    console.print(comparison_tables(given, card, card)[-1])
+    text = console.file.getvalue()
+    assert all(len(line) <= width for line in text.splitlines())
+    for word in ("difference", "largest", "pull, 2 h, 80", "differs", "holds", "12.5 %"):
+        assert word in text
 
 
 def test_cards_within_the_tolerance_are_told_by_how_much(card):

@@ -166,6 +166,15 @@ TRIGGERS = [
         "answers with its long-term moduli there",
     ),
     ("service-not-stated", "note", {"service": GONE}, "no [service] table"),
+    ("expansion-not-stated", "note", {"expansion": GONE}, "thermal strain is taken as 0"),
+    ("expansion-too-large", "warning", {"expansion.alpha": 62.0}, "expansion.alpha is 62 1/K, more than 0.001 1/K"),
+    (
+        "hardly-relaxes",
+        "warning",
+        # shear terms of 1e-4 of the modulus, as where its two columns are exchanged
+        {"prony.shear": [[1e-6, 1e-4], [1.0, 1e-4], [1e8, 1e-4]]},
+        "all terms together carry 0.03 % of the modulus",
+    ),
 ]
 
 

@@ -5,7 +5,16 @@ import pytest
 from pydantic import Field, model_validator
 
 import matlib.documents as documents
-from matlib.documents import ContradictionError, Document, read_text, read_toml, shown, validated, write_atomically
+from matlib.documents import (
+    ContradictionError,
+    Document,
+    read_text,
+    read_toml,
+    require_kind,
+    shown,
+    validated,
+    write_atomically,
+)
 from matlib.errors import Fault, FaultyInputError, FileError
 
 
@@ -289,3 +298,37 @@ def test_a_pipe_is_written_to_and_not_replaced(tmp_path):
     finally:
         os.close(reader)
     assert stat.S_ISFIFO(pipe.stat().st_mode)
+
+
+def test_a_line_that_is_no_toml_is_shown_with_what_to_write(tmp_path):
+    file = tmp_path / "a.card.toml"
+    file.write_text("[shift]\nC1 = 17,4\n")
+    with pytest.raises(FileError) as caught:
+        read_toml(file)
+    (fault,) = caught.value.faults
+    assert fault.found.startswith("'C1 = 17,4': ")
+    assert fault.hint == "write a decimal point in place of the comma"
+    file.write_text("a = 1\nb = 2\na = 3\n")
+    with pytest.raises(FileError, match="found 'a = 3': Cannot overwrite a value"):
+        read_toml(file)
+
+
+@pytest.mark.parametrize(
+    ("keys", "wanted", "kind"),
+    [
+        ("prony", "path", "card"),
+        ("segment", "card", "path"),
+        ("python", "card", "routine file"),
+        ("cases", "path", "sweep"),
+    ],
+)
+def test_a_file_of_another_kind_is_told_by_its_kind(keys, wanted, kind):
+    with pytest.raises(FileError) as caught:
+        require_kind({keys: {}}, wanted, "x.toml")
+    (fault,) = caught.value.faults
+    assert (fault.found, fault.expected) == (f"a {kind}", f"a {wanted}")
+
+
+def test_a_file_of_the_kind_wanted_or_of_none_is_left_to_its_own_checks():
+    require_kind({"prony": {}, "segment": []}, "card", "x.toml")
+    require_kind({"name": "x"}, "card", "x.toml")
