@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from drivers.baseline_paths import RecordedPath
 from drivers.difference import largest_difference
+from drivers.ensemble import EnsembleHistory, run_ensemble
 from drivers.history import History
 from drivers.path import Path
 from drivers.point import drive
@@ -74,6 +75,26 @@ class Bench:
                 responses.append(drive(routine, path))
             except (CardproofError, ArithmeticError):
                 responses.append(None)
+        return tuple(responses)
+
+    def run_many(
+        self, materials: Sequence[Material], done: Callable[[int], None]
+    ) -> tuple[EnsembleHistory, ...] | None:
+        """Responses of many materials to every path, side by side; None where one of them has none.
+
+        Parameters
+        ----------
+        materials : sequence of Material
+        done : callable
+            Called after each path with the number of paths run so far.
+        """
+        responses = []
+        try:
+            for path in self._runs:
+                responses.append(run_ensemble(materials, path, keep="all"))
+                done(len(responses))
+        except (CardproofError, ArithmeticError):
+            return None
         return tuple(responses)
 
     def change(self, first: Sequence[History | None], second: Sequence[History | None]) -> Change:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -16,6 +16,7 @@ from drivers.studies.bench import Bench
 from matlib.arrays import FloatArray
 from matlib.card import Card
 from matlib.errors import CardproofError, ParameterError
+from matlib.material import Material
 
 __all__ = ["LEVEL", "PathScatter", "Scatter", "scatter"]
 
@@ -126,27 +127,65 @@ def scatter(
     centre = [response for response in bench.run(recorded.material()) if response is not None]
     if len(centre) < len(bench.paths):
         raise ParameterError("recorded card", "one with a response to every path", f"{len(centre)} responses")
-    draws = _draws(spread, seed)
+    told = progress if progress is not None else lambda count: None
+    sampled = _Samples(recorded, spread, seed, samples)
+    kept = _side_by_side(bench, sampled.materials(), told) or _one_by_one(bench, sampled, told)
+    paths = tuple(_path_scatter(verdict, centre[k], kept[k]) for k, verdict in enumerate(verification.paths))
+    return Scatter(samples=samples, redrawn=sampled.redrawn, seed=seed, paths=paths)
+
+
+class _Samples:
+    """Materials of a card with sampled constants; a draw that is none, or is sent back, is drawn again and counted."""
+
+    def __init__(self, recorded: Card, spread: Spread, seed: int, samples: int) -> None:
+        self.recorded, self.spread, self.seed, self.samples = recorded, spread, seed, samples
+        self.redrawn = 0
+
+    def materials(self) -> list[Material]:
+        """The first so many, from the beginning of the draws."""
+        self.redrawn, drawn = 0, self.draws()
+        return [next(drawn) for _ in range(self.samples)]
+
+    def draws(self) -> Iterator[Material]:
+        """One after the other."""
+        for values in _draws(self.spread, self.seed):
+            try:
+                yield with_constants(
+                    self.recorded, dict(zip(self.spread.keys, values.tolist(), strict=True))
+                ).material()
+            except CardproofError:
+                self.send_back()
+
+    def send_back(self) -> None:
+        """Count a draw that will not do; `ParameterError` where hardly any does."""
+        self.redrawn += 1
+        if self.redrawn > MOST_DRAWS * self.samples:
+            hint = "look at the standard deviations: are they in the card's units?"
+            found = f"{self.redrawn} draws that are none"
+            raise ParameterError("spread", "one that mostly makes materials", found, hint)
+
+
+def _side_by_side(
+    bench: Bench, materials: Sequence[Material], told: Callable[[int], None]
+) -> list[list[History]] | None:
+    """Responses of every sample to each path; None where a sample has none."""
+    share = len(materials) / len(bench.paths)
+    ensembles = bench.run_many(materials, lambda paths: told(round(share * paths) - round(share * (paths - 1))))
+    return None if ensembles is None else [[each.member(j) for j in range(len(materials))] for each in ensembles]
+
+
+def _one_by_one(bench: Bench, sampled: _Samples, told: Callable[[int], None]) -> list[list[History]]:
+    """The same where some samples have no response, and others take their place."""
+    sampled.redrawn, drawn = 0, sampled.draws()
     kept: list[tuple[History, ...]] = []
-    redrawn = 0
-    while len(kept) < samples:
-        responses = _responses(recorded, bench, dict(zip(spread.keys, next(draws).tolist(), strict=True)))
-        if responses is None:
-            redrawn += 1
-            if redrawn > MOST_DRAWS * samples:
-                hint = "look at the standard deviations: are they in the card's units?"
-                raise ParameterError(
-                    "spread", "one that mostly makes materials", f"{redrawn} draws that are none", hint
-                )
+    while len(kept) < sampled.samples:
+        responses = tuple(response for response in bench.run(next(drawn)) if response is not None)
+        if len(responses) < len(bench.paths):
+            sampled.send_back()
             continue
         kept.append(responses)
-        if progress is not None:
-            progress(1)
-    paths = tuple(
-        _path_scatter(verdict, centre[k], [responses[k] for responses in kept])
-        for k, verdict in enumerate(verification.paths)
-    )
-    return Scatter(samples=samples, redrawn=redrawn, seed=seed, paths=paths)
+        told(1)
+    return [list(responses) for responses in zip(*kept, strict=True)]
 
 
 def _draws(spread: Spread, seed: int) -> Iterator[FloatArray]:
@@ -156,16 +195,6 @@ def _draws(spread: Spread, seed: int) -> Iterator[FloatArray]:
     generator = np.random.default_rng(seed)
     while True:
         yield spread.means + root @ generator.standard_normal(len(spread.keys))
-
-
-def _responses(recorded: Card, bench: Bench, values: dict[str, float]) -> tuple[History, ...] | None:
-    """Responses of the card with these constants, or None where it is no material or has none."""
-    try:
-        material = with_constants(recorded, values).material()
-    except CardproofError:
-        return None
-    responses = tuple(response for response in bench.run(material) if response is not None)
-    return responses if len(responses) == len(bench.paths) else None
 
 
 def _path_scatter(verdict: PathVerdict, centre: History, responses: list[History]) -> PathScatter:

@@ -10,6 +10,7 @@ from drivers.baseline_file import Baseline
 from drivers.report.baseline import Verified, verified_data, verified_tables
 from drivers.spread_file import Spread, read_spread
 from drivers.studies.baseline import verify
+from drivers.studies.bench import Bench
 from drivers.studies.spread import Scatter, _draws, scatter
 from matlib.errors import FileError, ParameterError
 from tests.baselines import recorded, shown, sound
@@ -99,6 +100,24 @@ def test_samples_that_are_no_material_are_drawn_again_counted_and_told(tmp_path:
     assert f"{result.redrawn} draws were no material, or had no answer, and were drawn again" in told
     data = verified_data(verified)["scatter"]
     assert (data["samples"], data["redrawn"], data["level"], data["exceeds"]) == (100, result.redrawn, 0.95, False)
+
+
+def test_samples_side_by_side_are_samples_one_by_one(
+    tmp_path: Path, baseline: Baseline, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    text = '[spread]\n"shift.C1" = 0.3\n"prony.shear[3].fraction" = 0.1\n'  # some fractions fall below 0
+    counts: list[int] = []
+    verification = verify(sound().material(), baseline)
+    spread = spread_of(tmp_path, text)
+    many = scatter(sound(), spread, verification, samples=30, progress=counts.append)
+    assert sum(counts) == 30
+    monkeypatch.setattr(Bench, "run_many", lambda *_: None)
+    single = scatter(sound(), spread, verification, samples=30, progress=counts.append)
+    assert sum(counts) == 60
+    assert many.redrawn == single.redrawn > 0
+    for one, other in zip(many.paths, single.paths, strict=True):
+        assert one.band == pytest.approx(other.band, rel=1e-9)  # the same arithmetic, summed in another order
+        np.testing.assert_allclose(one.low, other.low, rtol=0.0, atol=1e-9 * float(np.abs(other.low).max()))
 
 
 def test_a_spread_that_makes_hardly_any_material_is_refused(tmp_path: Path, baseline: Baseline) -> None:
