@@ -11,8 +11,9 @@ from typing import Any
 from drivers.baseline_paths import RecordedPath, recorded_path, recorded_table
 from drivers.baseline_schema import FORMAT, SCHEMA, BaselineDocument
 from matlib.card import Card, parse_card, plain
-from matlib.documents import read_text, validated, write_atomically
+from matlib.documents import validated
 from matlib.errors import CardproofError, Fault, FaultyInputError, FileError
+from matlib.files import read_text, write_atomically
 from matlib.version import __version__
 
 __all__ = ["Baseline", "RecordedPath", "baseline_text", "read_baseline", "write_baseline"]

@@ -12,8 +12,9 @@ from drivers.path import MODES, Cycle, Mode, Path, Segment
 from drivers.record_file import read_record
 from matlib.arrays import BoolArray, FloatArray
 from matlib.card_schema import Number, StressUnit, TemperatureUnit, TimeUnit, not_lost
-from matlib.documents import Document, read_toml, require_kind, shown, validated
+from matlib.documents import Document, validated
 from matlib.errors import Fault, FaultyInputError
+from matlib.files import read_toml, require_kind, shown
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS, mandel_from_strain, mandel_from_stress
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 

@@ -12,8 +12,8 @@ import numpy as np
 
 from matlib.arrays import FloatArray
 from matlib.card_schema import SMALLEST_NUMBER
-from matlib.documents import read_text, shown
 from matlib.errors import Fault, FileError, UnknownNameError
+from matlib.files import read_text, shown
 from matlib.units import STRESS, TEMPERATURE, Unit, find_unit
 
 __all__ = ["Record", "read_record"]

@@ -12,8 +12,9 @@ from pydantic import Field
 from drivers.card_constants import constants
 from matlib.arrays import FloatArray, frozen
 from matlib.card import Card
-from matlib.documents import Document, read_toml, validated
+from matlib.documents import Document, validated
 from matlib.errors import Fault, FaultyInputError
+from matlib.files import read_toml
 
 __all__ = ["Spread", "read_spread"]
 

@@ -14,10 +14,11 @@ import numpy as np
 from matlib.arrays import frozen
 from matlib.card_faults import constant_faults, contradictions
 from matlib.card_schema import CardDocument, PronyTable
-from matlib.documents import read_toml, require_kind, validated
+from matlib.documents import validated
 from matlib.effective import shear_and_bulk_of_young
 from matlib.elastic import ElasticConstants, elastic_constants
 from matlib.errors import Fault, FaultyInputError, FileError, ParameterError, ShiftRangeError
+from matlib.files import read_toml, require_kind
 from matlib.material import Material
 from matlib.prony import PronySeries
 from matlib.shift import PluginError, ShiftLaw

@@ -7,9 +7,9 @@ from collections import Counter
 from collections.abc import Iterator
 
 from matlib.card_schema import CardDocument, PronyTable
-from matlib.documents import shown
 from matlib.elastic import elastic_constants
 from matlib.errors import Fault, ParameterError
+from matlib.files import shown
 from matlib.prony import FULL_SUM
 from matlib.shift_tables import CrossoverTable, LawTable, RangeTable, TableTable, VftTable, parse_shift
 from matlib.units import TEMPERATURE, Unit

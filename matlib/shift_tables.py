@@ -9,8 +9,9 @@ from pydantic import Field, model_validator
 
 from matlib.arrays import frozen
 from matlib.card_schema import Coefficient, EnergyUnit, Number, Pair
-from matlib.documents import ContradictionError, Document, shown, validated
+from matlib.documents import ContradictionError, Document, validated
 from matlib.errors import Fault, FaultyInputError, ParameterError, nearest_hint
+from matlib.files import shown
 from matlib.shift import (
     VFT,
     WLF,

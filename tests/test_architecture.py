@@ -11,7 +11,7 @@ ROOT = Path(__file__).parents[1]
 LAYERS = [  # from the bottom up; a module imports from lower layers, and from its own without a circle
     "matlib matlib.version matlib.errors",
     "matlib.arrays",
-    "matlib.units matlib.tensors matlib.documents",
+    "matlib.units matlib.tensors matlib.files matlib.documents",
     "matlib.terms matlib.prony matlib.interconversion matlib.elastic matlib.effective matlib.mode_kernels matlib.shift*",
     "matlib.material matlib.packing matlib.recursion matlib.routine",
     "matlib.compiling matlib.kernels matlib.term_kernels matlib.weight_kernels",

@@ -12,7 +12,7 @@ from drivers.report.data import checks_data
 from drivers.report.tables import findings_table
 from matlib.admissibility import check_card
 from matlib.card import read_card
-from matlib.documents import read_all
+from matlib.files import read_all
 
 if TYPE_CHECKING:
     from drivers.report.page import Page

@@ -15,8 +15,8 @@ from drivers.report.fit import fit_data, fit_tables
 from drivers.report.tables import conversion_tables
 from matlib.card import read_card
 from matlib.card_conversion import convert_card
-from matlib.documents import write_atomically
 from matlib.errors import ParameterError, UnknownNameError
+from matlib.files import write_atomically
 from matlib.shift.conversion import TARGETS, FitMethod
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit, parse_temperature
 

@@ -27,8 +27,8 @@ from drivers.studies.slips import Slip
 from matlib.admissibility import check_card
 from matlib.card import Card, read_card
 from matlib.card_conversion import convert_card
-from matlib.documents import write_atomically
 from matlib.errors import Fault, FileError
+from matlib.files import write_atomically
 from matlib.units import STRESS, TEMPERATURE
 from matlib.viscoelastic import LinearViscoelastic
 

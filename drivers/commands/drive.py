@@ -21,8 +21,8 @@ from drivers.report.tables import history_tables, percent
 from drivers.studies.trial import OWN, Rule
 from drivers.subject import Subject
 from matlib.card import Card
-from matlib.documents import write_atomically
 from matlib.errors import ParameterError
+from matlib.files import write_atomically
 from matlib.recursion import find_recursion
 from matlib.routine import Routine
 from matlib.shift import find_shift_rule

@@ -3,6 +3,6 @@
 from __future__ import annotations
 
 from drivers.subject import read_subject
-from matlib.documents import gather, read_all
+from matlib.files import gather, read_all
 
 __all__ = ["gather", "read_all", "read_subject"]

@@ -7,8 +7,8 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from drivers.commands.reporting import Report, write_report
-from matlib.documents import write_atomically
 from matlib.errors import Fault, FileError, ParameterError
+from matlib.files import write_atomically
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure

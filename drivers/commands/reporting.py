@@ -61,7 +61,7 @@ def inputs_of(report: Report | None, files: Iterable[tuple[str, str]]) -> tuple[
 
 def _named(file: str) -> list[tuple[str, str]]:
     """The files that a path or a routine names: a measured record; a card, a library, a module."""
-    from matlib.documents import read_toml
+    from matlib.files import read_toml
 
     if not file.endswith((".path.toml", ".routine.toml")):
         return []
@@ -90,6 +90,6 @@ def origin_of(report: Report, inputs: tuple[File, ...], outputs: Iterable[tuple[
 def write_report(report: Report, page: Callable[[Report], Page]) -> None:
     """Make the page and write it whole."""
     from drivers.report.page import html
-    from matlib.documents import write_atomically
+    from matlib.files import write_atomically
 
     write_atomically(report.file, html(page(report)))

@@ -14,8 +14,8 @@ from drivers.sweep.export import csv_of, parquet_of
 from drivers.sweep.plan import plan_of
 from drivers.sweep.run import run_sweep
 from drivers.sweep.sweep_file import SweepFile, read_sweep
-from matlib.documents import write_atomically
 from matlib.errors import ParameterError
+from matlib.files import write_atomically
 
 if TYPE_CHECKING:
     from drivers.report.page import Page

@@ -15,8 +15,9 @@ from drivers.foreign.failure import KINDS, RoutineFailureError
 from drivers.foreign.foreign import ForeignRoutine
 from drivers.foreign.routine_file import SUFFIX
 from matlib.arrays import FloatArray, frozen
-from matlib.documents import Document, read_text, shown_text, validated, write_atomically
+from matlib.documents import Document, validated
 from matlib.errors import Fault, FaultyInputError, FileError
+from matlib.files import read_text, shown_text, write_atomically
 from matlib.routine import Increment, Update
 
 __all__ = ["Replay", "ReplayResult", "read_replay", "replay", "replay_name", "save_replay"]

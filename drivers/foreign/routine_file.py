@@ -10,8 +10,9 @@ from pydantic import Field, model_validator
 
 from matlib.arrays import FloatArray, frozen
 from matlib.card import Card, read_card
-from matlib.documents import ContradictionError, Document, read_toml, validated
+from matlib.documents import ContradictionError, Document, validated
 from matlib.errors import Fault, FaultyInputError, FileError
+from matlib.files import read_toml
 from matlib.units import STRESS, TEMPERATURE, TIME, Unit
 
 __all__ = ["SUFFIX", "RoutineDocument", "RoutineFile", "is_routine_file", "read_routine_file"]

@@ -13,7 +13,7 @@ from drivers.report.data import envelope, place_data, subject_data
 from drivers.report.tables import percent, place_text, plain_table, temperature_text, time_text, verdict_line
 from drivers.studies.blame import Blame
 from drivers.studies.ladder import RuleResult
-from drivers.studies.runner import OWN
+from drivers.studies.runner import OWN, Rule
 from drivers.studies.steps import StepsResult
 from drivers.subject import Subject
 from matlib.recursion import find_recursion
@@ -22,6 +22,7 @@ from matlib.units import Unit
 __all__ = ["blame_sentence", "steps_data", "steps_tables"]
 
 LARGE_RATIO = 5.0
+ASSUMED = Rule(shift_rule="integrated", recursion="exponential")  # where none is named
 """Relaxation times in an increment from which a recursion without the right limit is near its wrong one."""
 
 
@@ -105,6 +106,9 @@ def steps_tables(result: StepsResult, card: Subject) -> list[RenderableType]:
     parts: list[RenderableType] = [verdict_line(result.holds, text), Text(bound)]
     if result.blame is not None:
         parts.append(Text(blame_sentence(result.blame, card.temperature_unit)))
+    if result.rule == ASSUMED:
+        told = f"The rule is {ASSUMED}; where the simulation has another, name it with --shift-rule and --recursion."
+        parts.append(Text(told))
     parts.append(_advice_table(result, card))
     parts.append(_rules_table(result))
     return parts

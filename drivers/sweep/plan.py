@@ -20,8 +20,8 @@ from drivers.studies.trial import Rule
 from drivers.sweep.digest import digest
 from drivers.sweep.sweep_file import SweepFile
 from matlib.card import Card, plain, read_card
-from matlib.documents import gather
 from matlib.errors import CardproofError, Fault, FileError
+from matlib.files import gather
 from matlib.material import Material
 from matlib.version import __version__
 

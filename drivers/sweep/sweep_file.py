@@ -10,8 +10,9 @@ from typing import Annotated, Literal
 from pydantic import Field
 
 from drivers.studies.trial import Rule
-from matlib.documents import Document, read_toml, shown, validated
+from matlib.documents import Document, validated
 from matlib.errors import Fault, FaultyInputError
+from matlib.files import read_toml, shown
 
 __all__ = ["SweepFile", "read_sweep"]
 

@@ -11,8 +11,8 @@ from drivers.battery import LONGEST, SHORTEST, Window, battery, card_window
 from drivers.point import drive
 from matlib.card import Card, read_card
 from matlib.card_conversion import card_text
-from matlib.documents import write_atomically
 from matlib.errors import FileError
+from matlib.files import write_atomically
 from matlib.material import Material
 from matlib.prony import PronySeries
 from matlib.shift import WLF, MeasuredRange

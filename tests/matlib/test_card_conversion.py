@@ -7,8 +7,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from matlib.card_conversion import card_text, convert_card
-from matlib.documents import write_atomically
 from matlib.errors import ConversionError, FileError
+from matlib.files import write_atomically
 from matlib.units import STRESS, TEMPERATURE, TIME
 from tests.cards import GONE, SOUND, changed, read
 from tests.strategies import COLD, HOT, LN10, arrhenius_laws, card_tables, law_constants, vft_laws, wlf_laws
