@@ -120,5 +120,8 @@ def _spread(document: SpreadDocument, card: Card) -> Spread:
 def _hint(key: str, known: dict[str, float | int]) -> str:
     import difflib
 
+    of_term, _, last = key.rpartition(".")
+    if last in ("modulus", "moduli") and f"{of_term}.fraction" in known:
+        return f"write '{of_term}.fraction', which is the modulus of an absolute series"
     close = difflib.get_close_matches(key, known, n=1)
     return f"write {close[0]!r}" if close else "keys are such as 'shift.C1', 'elastic.E', 'prony.shear[1].fraction'"

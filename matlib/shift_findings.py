@@ -10,7 +10,7 @@ from matlib.card import Card
 from matlib.errors import ShiftRangeError, both_scales
 from matlib.finding import Finding, Severity
 from matlib.material import Material
-from matlib.shift import Crossover, MeasuredRange, Polynomial, ShiftLaw, Table
+from matlib.shift import WLF, Crossover, MeasuredRange, Polynomial, ShiftLaw, Table
 
 __all__ = ["law_findings", "measured_range_findings", "pole_findings"]
 
@@ -56,6 +56,12 @@ def law_findings(card: Card, material: Material) -> list[Finding]:
     law = _unwrapped(material.shift)
     if isinstance(law, Table):
         findings += _table_reference(law)
+    if isinstance(law, WLF) and "base" not in card.law_table.model_fields_set:
+        message = (
+            'shift.base is not stated, so C1 belongs to log10 a_T; write base = 10, or base = "e" where C1 comes from '
+            "natural logarithms, which is a factor of 2.3."
+        )
+        findings.append(Finding(id="base-not-stated", severity="note", message=message))
     return findings
 
 

@@ -166,6 +166,7 @@ TRIGGERS = [
         "answers with its long-term moduli there",
     ),
     ("service-not-stated", "note", {"service": GONE}, "no [service] table"),
+    ("base-not-stated", "note", {"shift.base": GONE}, "C1 belongs to log10 a_T"),
     ("expansion-not-stated", "note", {"expansion": GONE}, "thermal strain is taken as 0"),
     ("expansion-too-large", "warning", {"expansion.alpha": 62.0}, "expansion.alpha is 62 1/K, more than 0.001 1/K"),
     (

@@ -145,6 +145,10 @@ def test_a_key_that_the_card_does_not_have_is_named_with_the_likely_one(tmp_path
     assert "'shift.law'" in message  # a text does not scatter
 
 
+def test_the_modulus_of_a_term_is_called_its_fraction(tmp_path: Path) -> None:
+    assert "write 'prony.shear[2].fraction'" in faults(tmp_path, '[spread]\n"prony.shear[2].modulus" = 1.0\n')
+
+
 def test_a_correlation_with_a_key_that_does_not_scatter_is_refused(tmp_path: Path) -> None:
     text = STIFFNESS + '[[correlation]]\nbetween = ["elastic.E", "shift.C1"]\nvalue = 0.5\n'
     assert "correlation[1].between: found 'shift.C1', expected a key of [spread]" in faults(tmp_path, text)
