@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from typing import Any, Literal
 
 from matlib.card import Card, parse_card, plain
+from matlib.units import difference_name
 
 __all__ = ["Constant", "constants", "in_units_of", "with_constants"]
 
@@ -52,15 +53,10 @@ class Constant:
             case "temperature":
                 return units.temperature
             case "difference":
-                return _degree(card)
+                return difference_name(units.temperature)
             case "per temperature":
-                return f"1/{_degree(card)}" + (f"^{self.power}" if self.power > 1 else "")
+                return f"1/{difference_name(units.temperature)}" + (f"^{self.power}" if self.power > 1 else "")
         return ""
-
-
-def _degree(card: Card) -> str:
-    """Unit of temperature differences: a kelvin, unless degrees are Fahrenheit's."""
-    return "degF" if card.document.units.temperature == "degF" else "K"
 
 
 def constants(card: Card) -> dict[str, Constant]:

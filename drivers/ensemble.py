@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Iterator, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
@@ -13,6 +12,7 @@ import numpy as np
 from drivers.history import History
 from drivers.path import Path, Segment, segment_blocks
 from drivers.point import ResponseError, kept_rows
+from drivers.processors import processors
 from matlib.arrays import FloatArray
 from matlib.ensemble import Ensemble, Room
 from matlib.errors import ParameterError
@@ -139,7 +139,7 @@ def run_ensemble(
         raise ParameterError("threads", ">= 1", threads)
     if not materials:
         raise ParameterError("materials", "at least one", "none")
-    threads = threads or max(1, min(_processors(), len(materials) // MEMBERS_A_THREAD))
+    threads = threads or max(1, min(processors(), len(materials) // MEMBERS_A_THREAD))
     size = min(GROUP, -(-len(materials) // (GROUPS_A_THREAD * threads)))
 
     def take(first: int) -> list[_Rows]:
@@ -163,11 +163,6 @@ def run_ensemble(
         peak_stress=np.concatenate([np.max([rows.peak for rows in group], axis=0) for group in taken]),
         ends=np.concatenate([rows.ends for rows in common]),
     )
-
-
-def _processors() -> int:
-    """Those that this process may use."""
-    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
 
 
 def _march(group: Ensemble, path: Path, keep: str | int, first: int) -> Iterator[_Rows]:

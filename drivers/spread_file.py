@@ -13,7 +13,7 @@ from drivers.card_constants import constants
 from matlib.arrays import FloatArray, frozen
 from matlib.card import Card
 from matlib.documents import Document, validated
-from matlib.errors import Fault, FaultyInputError
+from matlib.errors import Fault, FaultyInputError, nearest_hint
 from matlib.files import read_toml
 
 __all__ = ["Spread", "read_spread"]
@@ -118,10 +118,7 @@ def _spread(document: SpreadDocument, card: Card) -> Spread:
 
 
 def _hint(key: str, known: dict[str, float | int]) -> str:
-    import difflib
-
     of_term, _, last = key.rpartition(".")
     if last in ("modulus", "moduli") and f"{of_term}.fraction" in known:
         return f"write '{of_term}.fraction', which is the modulus of an absolute series"
-    close = difflib.get_close_matches(key, known, n=1)
-    return f"write {close[0]!r}" if close else "keys are such as 'shift.C1', 'elastic.E', 'prony.shear[1].fraction'"
+    return nearest_hint(key, known) or "keys are such as 'shift.C1', 'elastic.E', 'prony.shear[1].fraction'"

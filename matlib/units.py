@@ -16,6 +16,7 @@ __all__ = [
     "TEMPERATURE",
     "TIME",
     "Unit",
+    "difference_name",
     "find_unit",
     "parse_temperature",
 ]
@@ -92,6 +93,17 @@ ENERGY = {
     "eV": Unit("eV", 96485.33212),  # elementary charge times Avogadro's number, CODATA 2018
 }
 QUANTITIES = {"stress": STRESS, "time": TIME, "temperature": TEMPERATURE, "energy": ENERGY}
+
+
+def difference_name(unit: str) -> str:
+    """The unit of temperature differences: a kelvin, unless degrees are Fahrenheit's.
+
+    Examples
+    --------
+    >>> difference_name("degC"), difference_name("degF")
+    ('K', 'degF')
+    """
+    return "degF" if unit == "degF" else "K"
 
 
 def find_unit(quantity: str, name: object) -> Unit:

@@ -14,7 +14,7 @@ from drivers.path import Path
 from drivers.path_file import read_path
 from drivers.report.data import comparison_data
 from drivers.report.progress import progress
-from drivers.report.tables import comparison_tables, slip_tables
+from drivers.report.tables import comparison_tables
 from drivers.studies.compare import Comparison, compare
 from drivers.studies.slips import Slip, find_slips
 from drivers.studies.slips.evidence import Evidence
@@ -56,7 +56,7 @@ def run(
         from drivers.report.plots import comparison_figure
 
         save_figure(comparison_figure(comparison, a, b), plot)
-    tables = [*comparison_tables(comparison, a, b)[:1], *slip_tables(slips), *comparison_tables(comparison, a, b)[1:]]
+    tables = comparison_tables(comparison, a, b, slips)
 
     def page(wanted: Report) -> Page:
         from drivers.commands.compare_routines import page_of

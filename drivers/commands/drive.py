@@ -58,7 +58,7 @@ def run(
     if exact and (shift_rule or recursion):
         hint = "the reference solution uses neither"
         raise ParameterError("--exact", "given without --shift-rule and --recursion", shift_rule or recursion, hint)
-    rule = Rule(shift_rule=shift_rule or "integrated", recursion=recursion or "exponential")
+    rule = Rule.of_names(shift_rule, recursion)
     find_shift_rule(rule.shift_rule)
     find_recursion(rule.recursion)
     subject, path = gather([lambda: read_subject(card_file), lambda: read_path(path_file)])

@@ -77,7 +77,7 @@ def run(
             )
         return with_routine("steps", json_file, lambda: hand_over(_of_routine(subject, path, fraction), subject))
     assert isinstance(subject, Card)
-    rule = Rule(shift_rule=shift_rule or "integrated", recursion=recursion or "exponential")
+    rule = Rule.of_names(shift_rule, recursion)
     rules = [
         Rule(shift_rule=one, recursion=other)
         for one in ([shift_rule] if shift_rule else SHIFT_RULES)

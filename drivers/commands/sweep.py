@@ -2,12 +2,12 @@
 
 from __future__ import annotations
 
-import os
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from drivers.commands.output import deliver, require_folder, require_picture, save_figure
 from drivers.commands.reporting import Report, inputs_of, origin_of
+from drivers.processors import processors
 from drivers.report.progress import progress
 from drivers.report.sweep import sweep_data, sweep_figure, sweep_tables
 from drivers.sweep.export import csv_of, parquet_of
@@ -49,7 +49,9 @@ def run(
     _require_own(sweep, {"--json": json_file, "--csv": csv, "--parquet": parquet, "--plot": plot})
     plan = plan_of(sweep)
     with progress(plan.sweep.name, len(plan)) as advance:
-        result = run_sweep(plan, processes=processes or _cores(), on=on, retry_failed=retry_failed, progress=advance)
+        result = run_sweep(
+            plan, processes=processes or processors(), on=on, retry_failed=retry_failed, progress=advance
+        )
     if csv is not None:
         write_atomically(csv, csv_of(result.rows))
     if parquet is not None:
@@ -67,11 +69,6 @@ def run(
         return sweep_page(result, origin_of(wanted, inputs_of(wanted, files), outputs))
 
     return deliver(sweep_data(result, csv, parquet), sweep_tables(result), json_file, report, page)
-
-
-def _cores() -> int:
-    """Cores that this process may use."""
-    return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
 
 
 def _require_own(sweep: SweepFile, outputs: dict[str, str | None]) -> None:

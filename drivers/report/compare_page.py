@@ -16,7 +16,6 @@ from drivers.report.tables import (
     percent,
     place_text,
     remaining_text,
-    slip_tables,
     temperature_text,
 )
 from drivers.studies.compare import Comparison, PathComparison
@@ -32,8 +31,7 @@ MORE_PATHS = 8
 
 def compare_page(comparison: Comparison, a: Subject, b: Subject, slips: Sequence[Slip], origin: Origin) -> Page:
     """Verdict, likely slips, shift laws, moduli and responses of two cards; of routines, the responses."""
-    tables = comparison_tables(comparison, a, b)
-    parts = parts_of([tables[0], *slip_tables(slips), *tables[1:]], ["Every path, the worst first"])
+    parts = parts_of(comparison_tables(comparison, a, b, slips), ["Every path, the worst first"])
     count = len(comparison.paths)
     both = [constants_table({"A": a, "B": b})] if isinstance(a, Card) and isinstance(b, Card) else []
     return Page(

@@ -22,7 +22,7 @@ from matlib.units import Unit
 __all__ = ["blame_sentence", "steps_data", "steps_tables"]
 
 LARGE_RATIO = 5.0
-ASSUMED = Rule(shift_rule="integrated", recursion="exponential")  # where none is named
+ASSUMED = Rule()  # where none is named
 """Relaxation times in an increment from which a recursion without the right limit is near its wrong one."""
 
 

@@ -10,7 +10,7 @@ from rich.text import Text
 
 from matlib.admissibility import Finding, is_admissible
 from matlib.tensors import STRAIN_COMPONENTS, STRESS_COMPONENTS
-from matlib.units import TIME, Unit
+from matlib.units import TIME, Unit, difference_name
 
 if TYPE_CHECKING:
     from rich.console import RenderableType
@@ -142,7 +142,7 @@ def _constant_unit(key: str, converted: ConvertedCard) -> str:
         case "T_ref" | "T_inf" | "measured":
             return temperature
         case "C2" | "B":  # differences, which a reader must not shift to another zero
-            return "degF" if temperature == "degF" else "K"
+            return difference_name(temperature)
         case "activation_energy":
             return str(converted.shift.get("energy_unit", "kJ/mol"))
         case "gas_constant":
@@ -186,11 +186,14 @@ def history_tables(history: History, title: str, stress: Unit, temperature: Unit
     return [table]
 
 
-def comparison_tables(comparison: Comparison, a: Subject, b: Subject) -> list[RenderableType]:
-    """Verdict, shift laws, paths: the worst first."""
+def comparison_tables(
+    comparison: Comparison, a: Subject, b: Subject, slips: Sequence[Slip] = ()
+) -> list[RenderableType]:
+    """Verdict, likely slips, shift laws, paths: the worst first."""
     worst = comparison.worst
     return [
         verdict_line(comparison.holds, f"{' and '.join(told_apart(a, b))} are {_same_text(comparison, worst)}"),
+        *slip_tables(slips),
         Text(_shift_text(comparison, a.temperature_unit)),
         *([Text(_bound_text(comparison))] if comparison.same != "identical" else []),
         _paths_table(_worst_first(comparison.paths), a),

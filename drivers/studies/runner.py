@@ -25,8 +25,14 @@ KEPT_ROWS = 1_000_000
 class Rule:
     """An update rule: how the clock of an increment is found, and how the integral is carried over it."""
 
-    shift_rule: str
-    recursion: str
+    shift_rule: str = "integrated"
+    recursion: str = "exponential"
+
+    @classmethod
+    def of_names(cls, shift_rule: str | None, recursion: str | None) -> Rule:
+        """With the defaults where no name is given."""
+        named = {"shift_rule": shift_rule, "recursion": recursion}
+        return cls(**{part: name for part, name in named.items() if name})
 
     def __str__(self) -> str:
         return f"{self.shift_rule}, {self.recursion}" if self != OWN else "its own rule"

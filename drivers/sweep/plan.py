@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import dataclasses
-import difflib
 import hashlib
 import json
 from collections.abc import Iterable, Iterator
@@ -20,7 +19,7 @@ from drivers.studies.trial import Rule
 from drivers.sweep.digest import digest
 from drivers.sweep.sweep_file import SweepFile
 from matlib.card import Card, plain, read_card
-from matlib.errors import CardproofError, Fault, FileError
+from matlib.errors import CardproofError, Fault, FileError, nearest_hint
 from matlib.files import gather
 from matlib.material import Material
 from matlib.version import __version__
@@ -202,9 +201,7 @@ def _card(file: str, name: str, sweep: SweepFile) -> Card:
     faults = []
     for key in sweep.deviation:
         if key not in known:
-            close = difflib.get_close_matches(key, known, n=1)
-            expected = "a key with a number in every card"
-            hint = f"write {close[0]!r}" if close else ""
+            expected, hint = "a key with a number in every card", nearest_hint(key, known)
             fault = Fault(key=f'samples.deviation."{key}"', found=f"none in {name}", expected=expected, hint=hint)
             faults.append(fault)
     if faults:
