@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from rich.console import RenderableType
+from rich.padding import Padding
 from rich.text import Text
 
 from drivers.baseline_file import Baseline, write_baseline
@@ -84,9 +85,9 @@ def run(folder: Path, *, json_file: str | None = None, report: Report | None = N
         Text("1. Is the laboratory's card sane?  cardproof check", style="bold"),
         *findings_table(laboratory, findings),
         Text("\n2. Do the cards made from it say the same?  cardproof convert, cardproof compare", style="bold"),
-        *(Text(f"   {case.file}: {case.made}") for case in CASES),
-        Text(
-            "   Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"
+        *(_indented(f"{case.file}: {case.made}") for case in CASES),
+        _indented(
+            "Held against laboratory.card.toml in relaxation, creep, pulls, thermal jump, thermal cycle and cooling:\n"
         ),
         _verdicts(comparisons, laboratory),
         Text("\n3. Which mistake explains the difference?", style="bold"),
@@ -161,6 +162,11 @@ def _compare(laboratory: Card, folder: Path, case: _Case) -> tuple[Comparison, t
     write_atomically(folder / f"compare-{stem}.json", json_text(comparison_data(comparison, laboratory, other, slips)))
     save_figure(comparison_figure(comparison, laboratory, other), str(folder / f"compare-{stem}.png"))
     return comparison, slips
+
+
+def _indented(text: str) -> Padding:
+    """A step's detail, whose further lines stand under the first."""
+    return Padding(Text(text), (0, 0, 0, 3))
 
 
 def _verdicts(comparisons: list[tuple[_Case, Comparison]], laboratory: Card) -> RenderableType:
