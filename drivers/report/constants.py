@@ -24,6 +24,10 @@ def constants_table(cards: Mapping[str, Card], caption: str = "Constants", *, te
     """
     found = {name: constants(card) for name, card in cards.items()}
     keys = list(dict.fromkeys(key for each in found.values() for key in each))
+    tables = list(dict.fromkeys(key.partition(".")[0] for key in keys))
+    keys.sort(
+        key=lambda key: tables.index(key.partition(".")[0])
+    )  # what only the second card has stands with its table
     if not terms:
         keys = [key for key in keys if not key.startswith("prony.")]
     rows = []
