@@ -1,9 +1,9 @@
 import ctypes
-import time
 
 import numpy as np
 import pytest
 
+from benchmarks.timing import interleaved
 from drivers.foreign.arena import INCREMENT, Arena
 from drivers.foreign.compiled import LOST, steps_of
 from drivers.foreign.foreign import ForeignRoutine
@@ -92,16 +92,6 @@ def test_many_blocks_and_single_updates_say_the_same(faulty):
     assert memory.tolist() == response.memory.tolist()
 
 
-def fastest(task, repeats=25):
-    task()
-    times = []
-    for _ in range(repeats):
-        start = time.perf_counter()
-        task()
-        times.append(time.perf_counter() - start)
-    return min(times)
-
-
 def test_a_thousand_increments_cost_little_more_than_as_many_calls(examples, capsys):
     n, strain = 1000, np.zeros(6)
     with ForeignRoutine(examples / "c.routine.toml") as routine:
@@ -111,20 +101,21 @@ def test_a_thousand_increments_cost_little_more_than_as_many_calls(examples, cap
             time=plain.time, time_end=plain.time_end, duration=plain.duration, temperature=np.full(n + 1, 330.0),
             targets=plain.targets, stress_controlled=plain.stress_controlled,
         )  # fmt: skip
-        isolated = fastest(lambda: routine.run(warm, strain, memory))
         constants = np.array(routine.described.constants)
-    function = ctypes.CDLL(str(examples / "routine-c.so")).stress_update
-    step = np.array([0.0, 1.0, 330.0, 330.0, *[0.0] * 6, 1e-5, *[0.0] * 5])
-    arrays = [np.zeros(memory.size), np.zeros(memory.size), np.zeros(6), np.zeros(36)]
-    pointers = [ctypes.c_void_p(a.ctypes.data) for a in (step, constants, *arrays)]
-    counts = [ctypes.c_int(constants.size), ctypes.c_int(memory.size)]
-    call = (pointers[0], counts[0], pointers[1], counts[1], *pointers[2:])
+        function = ctypes.CDLL(str(examples / "routine-c.so")).stress_update
+        step = np.array([0.0, 1.0, 330.0, 330.0, *[0.0] * 6, 1e-5, *[0.0] * 5])
+        arrays = [np.zeros(memory.size), np.zeros(memory.size), np.zeros(6), np.zeros(36)]
+        pointers = [ctypes.c_void_p(a.ctypes.data) for a in (step, constants, *arrays)]
+        counts = [ctypes.c_int(constants.size), ctypes.c_int(memory.size)]
+        call = (pointers[0], counts[0], pointers[1], counts[1], *pointers[2:])
 
-    def calls():
-        for _ in range(n):
-            function(*call)
+        def calls():
+            for _ in range(n):
+                function(*call)
 
-    direct = fastest(calls)
+        # in turn, so that whatever else the machine does meets both alike
+        timings = interleaved({"isolated": lambda: routine.run(warm, strain, memory), "direct": calls}, 50)
+    isolated, direct = timings["isolated"].least, timings["direct"].least
     with capsys.disabled():
         print(f"\n{1e6 * isolated / n:.2f} us an increment in a process of its own, {1e6 * direct / n:.2f} us a call, ratio "
               f"{isolated / direct:.2f}")  # fmt: skip
